@@ -1,0 +1,32 @@
+// Noise: exact band and weighting in the frequency domain, referred to the input, against physics.
+#pragma once
+
+#include <optional>
+#include <span>
+
+#include "coldpin/measure/figure.h"
+#include "coldpin/measure/scale.h"
+
+namespace coldpin::measure {
+
+struct NoiseQuestion {
+    std::span<const double> recording;
+    double rate_hz = 0.0;
+    LevelScale scale;
+    Band band;
+    std::optional<KnownLevel> gain_db;
+    std::optional<double> source_ohms;
+    double temperature_c = 20.0;
+    std::span<const double> interface_idle = {};  // interface alone, input terminated, same input gain
+};
+
+// Figures: noise_output with conditions.weighting none, A, C, 468 and conditions.detector "rms"; with a gain
+// noise_input_referred per weighting; with source_ohms besides noise_figure (dB, 290 K). Curve noise_density
+// (V/sqrt(Hz) with a scale, 1/sqrt(Hz) of full scale without). Interface noise is subtracted as power with
+// its uncertainty; when it leaves less than 3 dB the figure is a bound (at_most). Throws CannotMeasure for
+// silence and for an input-referred level below the thermal noise of the stated source beyond its
+// uncertainty (naming the likely cause: level reference, gain or termination); UsageError for less than
+// 0.25 s or a band outside (0, rate/2).
+Findings noise(const NoiseQuestion& question);
+
+}  // namespace coldpin::measure

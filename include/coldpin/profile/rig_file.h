@@ -1,0 +1,22 @@
+// Rig files: TOML, schema "coldpin-rig/1".
+#pragma once
+
+#include <filesystem>
+#include <string>
+
+#include "coldpin/rig/setup.h"
+
+namespace coldpin::profile {
+
+struct RigFile {
+    rig::Setup setup;
+    std::string source_text;
+    std::string source_name;
+};
+
+// `name` is a file, or the word "simulated" for the built-in simulated rig (the same text as
+// profiles/rigs/simulated.toml, compiled in). Errors as read_device_profile().
+RigFile read_rig(const std::string& name);
+RigFile rig_from_text(const std::string& text, const std::string& source_name);
+
+}  // namespace coldpin::profile

@@ -1,0 +1,33 @@
+// Is a recording whole? Content decides: drivers miss real losses and report harmless ones.
+#pragma once
+
+#include <cstddef>
+#include <optional>
+#include <span>
+#include <string>
+#include <vector>
+
+#include "coldpin/signal/stimulus.h"
+
+namespace coldpin::rig {
+
+struct Glitch {
+    std::string what;       // one sentence for people
+    std::size_t frame = 0;  // where, about
+};
+
+struct ContentReport {
+    std::vector<Glitch> glitches;
+    bool proven = false;  // the stimulus was heard clearly enough that a loss would have been seen
+    std::optional<double> delay_frames;  // of the stimulus in the recording, when heard
+    bool whole() const noexcept { return glitches.empty(); }
+};
+
+// Checks one channel against what was played: exact zeros on a live input (8 or more in a row, or all),
+// repeated blocks, and for tones, multitones and sweeps a delay that stays constant through the capture
+// (a change of one frame and more is found when the stimulus stands 20 dB out of the noise in its own band;
+// where it does not, proven = false). `expected_delay_frames` narrows the search when known.
+ContentReport check_content(std::span<const double> channel, double rate_hz, const signal::Stimulus& stimulus,
+                            std::optional<double> expected_delay_frames = std::nullopt);
+
+}  // namespace coldpin::rig

@@ -1,0 +1,163 @@
+#include "coldpin/check/perform.h"
+
+#include <algorithm>
+#include <chrono>
+#include <map>
+#include <utility>
+
+#include <fmt/core.h>
+
+#include "coldpin/profile/quantities.h"
+#include "coldpin/units/error.h"
+
+#include "instructions.h"
+
+namespace coldpin::check {
+
+namespace {
+
+using Place = std::pair<std::string, std::string>;  // unit channel, setting
+
+AnalysisOptions options_for(const profile::PlanStep& step) {
+    AnalysisOptions options;
+    options.band = step.band;
+    options.mains_hz = step.mains_hz;
+    return options;
+}
+
+// Appends the findings of a further capture of the same step (gain at several frequencies).
+void append(measure::Findings& all, measure::Findings&& more) {
+    if (all.kind.empty()) all.kind = more.kind;
+    std::move(more.figures.begin(), more.figures.end(), std::back_inserter(all.figures));
+    std::move(more.curves.begin(), more.curves.end(), std::back_inserter(all.curves));
+    for (auto& caution : more.cautions)
+        if (std::find(all.cautions.begin(), all.cautions.end(), caution) == all.cautions.end())
+            all.cautions.push_back(std::move(caution));
+}
+
+void analyse_step(StepResult& result, const Run& run) {
+    const auto& step = run.profile.plan.at(result.plan_step);
+    result.findings = {};
+    result.findings.kind = step.measure;
+    result.failure.clear();
+    try {
+        AnalysisInputs inputs;
+        if (step.measure == "cmrr") {
+            inputs.main = &run.captures.at(result.captures.at(0)).take;
+            inputs.common_mode = &run.captures.at(result.captures.at(1)).take;
+            result.findings = analyse(step.measure, inputs, options_for(step));
+            return;
+        }
+        for (std::size_t capture : result.captures) {
+            inputs.main = &run.captures.at(capture).take;
+            append(result.findings, analyse(step.measure, inputs, options_for(step)));
+        }
+    } catch (const CannotMeasure& error) {
+        result.failure = error.what();
+    }
+}
+
+void judge_all(Run& run) {
+    run.judgements.clear();
+    std::vector<Place> places;
+    for (const auto& step : run.steps) {
+        const Place place{step.unit_channel, step.setting};
+        if (std::find(places.begin(), places.end(), place) == places.end()) places.push_back(place);
+    }
+    for (const auto& [channel, setting] : places) {
+        for (const auto& requirement : run.profile.requirements) {
+            if (!requirement.setting.empty() && requirement.setting != setting) continue;
+            const auto* quantity = profile::find_quantity(requirement.quantity);
+            std::vector<const measure::Findings*> findings;
+            bool planned = false;
+            for (const auto& step : run.steps) {
+                if (step.unit_channel != channel || step.setting != setting) continue;
+                findings.push_back(&step.findings);
+                planned = planned || (quantity != nullptr && step.measure == quantity->measure);
+            }
+            // A requirement for every setting is asked where its measurement was planned.
+            if (planned) run.judgements.push_back(judge(requirement, setting, channel, findings));
+        }
+    }
+    run.verdict = overall(run.judgements);
+}
+
+// The gain of each place once it is known.
+void note_gain(std::map<Place, measure::Figure>& gains, const StepResult& step) {
+    const auto* gain = step.measure == "gain" ? step.findings.figure("gain") : nullptr;
+    if (gain != nullptr) gains[{step.unit_channel, step.setting}] = *gain;
+}
+
+void bring_about(const rig::Wiring& wiring, const std::optional<rig::Wiring>& before, rig::Session& session,
+                 Bench& bench) {
+    if (session.prepare(wiring)) return;
+    if (before)
+        for (const auto& sentence : instructions(*before, wiring, session.setup())) bench.ask(sentence);
+    session.confirm(wiring);
+}
+
+}  // namespace
+
+Run perform(const profile::DeviceProfile& profile, const profile::RigFile& rig, rig::Session& session,
+            Bench& bench, const RunDetails& details) {
+    const auto begun = std::chrono::steady_clock::now();
+    CapturePlan plan = plan_captures(profile, session);
+    Run run;
+    run.tool_version = details.tool_version;
+    run.time_utc = details.time_utc;
+    run.serial = details.serial;
+    run.operator_name = details.operator_name;
+    run.notes = details.notes;
+    run.tags = details.tags;
+    run.profile = profile;
+    run.rig = rig;
+    run.rig.setup = session.setup();
+    run.backend = session.backend_description();
+    for (const auto& step : plan.steps)
+        run.steps.push_back({step.plan_step,
+                             profile.plan.at(step.plan_step).measure,
+                             step.setting,
+                             step.unit_channel,
+                             step.captures,
+                             {},
+                             ""});
+
+    std::map<Place, measure::Figure> gains;
+    std::optional<rig::Wiring> wiring;
+    for (std::size_t i = 0; i < plan.captures.size(); ++i) {
+        rig::CaptureRequest& request = plan.captures[i].request;
+        bench.progress(request.label, i, plan.captures.size());
+        bring_about(request.wiring, wiring, session, bench);
+        wiring = request.wiring;
+        const auto gain = gains.find({plan.captures[i].unit_channel, request.wiring.setting});
+        if (gain != gains.end()) {
+            request.gain_db = gain->second.value;
+            request.gain_uncertainty_db = gain->second.uncertainty;
+        }
+        rig::Capture capture = session.capture(request);
+        run.captures.push_back(
+            {{capture.label, std::move(capture.recording), std::move(capture.description)}, capture.takes});
+        for (auto& step : run.steps) {
+            const bool complete = std::all_of(step.captures.begin(), step.captures.end(),
+                                              [&](std::size_t c) { return c <= i; });
+            if (!complete || std::find(step.captures.begin(), step.captures.end(), i) == step.captures.end())
+                continue;
+            analyse_step(step, run);
+            note_gain(gains, step);
+        }
+        if (capture.takes > 1)
+            run.cautions.push_back(fmt::format("{} was taken {} times: damaged takes were thrown away",
+                                               capture.label, capture.takes));
+    }
+    bench.progress("done", plan.captures.size(), plan.captures.size());
+    judge_all(run);
+    run.wall_time_s = std::chrono::duration<double>(std::chrono::steady_clock::now() - begun).count();
+    return run;
+}
+
+void analyse_again(Run& run) {
+    for (auto& step : run.steps) analyse_step(step, run);
+    judge_all(run);
+}
+
+}  // namespace coldpin::check

@@ -1,0 +1,90 @@
+#include "coldpin/profile/quantities.h"
+
+#include <algorithm>
+#include <numeric>
+
+namespace coldpin::profile {
+
+const std::vector<Quantity>& quantities() {
+    static const std::vector<Quantity> all = {
+        {"gain", "gain", "gain", {"dB"}, {"frequency_hz"}},
+        {"output_level", "gain", "output level", {"dBu", "dBV", "V"}, {"frequency_hz"}},
+        {"lower_corner", "response", "lower corner (-3 dB)", {"Hz"}, {}},
+        {"upper_corner", "response", "upper corner (-3 dB)", {"Hz"}, {}, false, true},
+        {"response_deviation", "response", "largest deviation from flat", {"dB"}, {}},
+        {"magnitude", "response", "response", {"dB"}, {}, true},
+        {"phase", "response", "phase", {"degree"}, {}, true},
+        {"group_delay", "response", "group delay", {"s"}, {}, true},
+        {"harmonic_2", "response", "second harmonic", {"dB"}, {}, true},
+        {"harmonic_3", "response", "third harmonic", {"dB"}, {}, true},
+        {"noise_output",
+         "noise",
+         "noise at the output",
+         {"dBu", "dBV", "V", "dBFS"},
+         {"weighting", "detector"}},
+        {"noise_input_referred",
+         "noise",
+         "noise at the input",
+         {"dBu", "dBV", "V"},
+         {"weighting", "detector"}},
+        {"noise_figure", "noise", "noise figure", {"dB"}, {}},
+        {"noise_density", "noise", "noise density", {"V/sqrt(Hz)"}, {}, true},
+        {"mains_frequency", "hum", "mains frequency", {"Hz"}, {}},
+        {"hum_output", "hum", "hum at the output", {"dBu", "dBV", "V", "dBFS"}, {}},
+        {"hum_input_referred", "hum", "hum at the input", {"dBu", "dBV", "V"}, {}},
+        {"hum_harmonic", "hum", "hum harmonic", {"dBu", "dBV", "V", "dBFS"}, {"harmonic"}},
+        {"hum_to_noise", "hum", "hum over noise", {"dB"}, {}},
+        {"common_mode_rejection", "cmrr", "common-mode rejection", {"dB"}, {"frequency_hz"}, false, true},
+        {"polarity", "polarity", "polarity", {""}, {}},
+        {"latency", "latency", "latency of the path", {"frames"}, {}},
+    };
+    return all;
+}
+
+const Quantity* find_quantity(std::string_view name) {
+    const auto& all = quantities();
+    const auto found =
+        std::find_if(all.begin(), all.end(), [&](const Quantity& one) { return one.name == name; });
+    return found != all.end() ? &*found : nullptr;
+}
+
+const std::vector<std::string_view>& measure_kinds() {
+    static const std::vector<std::string_view> kinds = {"gain", "response", "noise",  "hum",
+                                                        "cmrr", "polarity", "latency"};
+    return kinds;
+}
+
+namespace {
+
+// Levenshtein distance, one row at a time.
+std::size_t edit_distance(std::string_view a, std::string_view b) {
+    std::vector<std::size_t> row(b.size() + 1);
+    std::iota(row.begin(), row.end(), std::size_t{0});
+    for (std::size_t i = 1; i <= a.size(); ++i) {
+        std::size_t diagonal = row[0];
+        row[0] = i;
+        for (std::size_t j = 1; j <= b.size(); ++j) {
+            const std::size_t above = row[j];
+            row[j] = std::min({above + 1, row[j - 1] + 1, diagonal + (a[i - 1] == b[j - 1] ? 0U : 1U)});
+            diagonal = above;
+        }
+    }
+    return row[b.size()];
+}
+
+}  // namespace
+
+std::string nearest_word(std::string_view word, const std::vector<std::string_view>& candidates) {
+    std::string_view best;
+    std::size_t least = std::max<std::size_t>(1, word.size() / 2) + 1;
+    for (std::string_view candidate : candidates) {
+        const std::size_t distance = edit_distance(word.substr(0, 200), candidate);
+        if (distance < least && !candidate.empty()) {
+            least = distance;
+            best = candidate;
+        }
+    }
+    return std::string(best);
+}
+
+}  // namespace coldpin::profile

@@ -1,0 +1,238 @@
+#include "continuity.h"
+
+#include <algorithm>
+#include <cmath>
+#include <complex>
+#include <numbers>
+#include <vector>
+
+#include <fmt/core.h>
+
+#include "coldpin/spectrum/fft.h"
+#include "coldpin/spectrum/tone_extent.h"
+#include "coldpin/spectrum/window.h"
+
+namespace coldpin::rig {
+
+namespace {
+
+using Complex = std::complex<double>;
+constexpr double two_pi = 2.0 * std::numbers::pi;
+constexpr double sure = 7.0;  // standard deviations
+
+double median(std::vector<double> values) {
+    if (values.empty()) return 0.0;
+    const auto middle = values.begin() + static_cast<std::ptrdiff_t>(values.size() / 2);
+    std::nth_element(values.begin(), middle, values.end());
+    return *middle;
+}
+
+// Spread of a series about its slow course, by the median of its second differences.
+double spread_of(const std::vector<double>& series) {
+    std::vector<double> bends;
+    for (std::size_t k = 2; k < series.size(); ++k)
+        bends.push_back(std::abs(series[k] - 2.0 * series[k - 1] + series[k - 2]));
+    return median(bends) / (0.6745 * std::sqrt(6.0));
+}
+
+// The place where `series` steps most, comparing medians of `reach` values on either side, the blocks at the
+// place itself left out; the step, and how sure.
+struct Step {
+    std::size_t at = 0;
+    double size = 0.0;
+};
+Step largest_step(const std::vector<double>& series, std::size_t reach) {
+    Step step;
+    for (std::size_t k = 2; k + 2 < series.size(); ++k) {
+        const std::size_t first = k > reach ? k - reach : 0, last = std::min(series.size(), k + 1 + reach);
+        const std::vector<double> before(series.begin() + static_cast<std::ptrdiff_t>(first),
+                                         series.begin() + static_cast<std::ptrdiff_t>(k));
+        const std::vector<double> after(series.begin() + static_cast<std::ptrdiff_t>(k) + 1,
+                                        series.begin() + static_cast<std::ptrdiff_t>(last));
+        if (before.size() < 2 || after.size() < 2) continue;
+        const double size = median(after) - median(before);
+        if (std::abs(size) > std::abs(step.size)) step = {k, size};
+    }
+    return step;
+}
+
+// ---- tones
+
+void check_tone(std::span<const double> channel, double rate_hz, double frequency_hz, double spacing_hz,
+                ContentReport& report) {
+    const auto extent = spectrum::find_tone(channel, rate_hz, frequency_hz, 0.02);
+    if (!extent.found) return;
+    const double length_s = std::max({8.0 / frequency_hz, 6.0 / spacing_hz, 0.01});
+    const auto block = static_cast<std::size_t>(length_s * rate_hz);
+    const std::vector<double> window = spectrum::window_samples(spectrum::Window::blackman_harris, block);
+    std::vector<double> phases;
+    std::vector<std::size_t> begins;
+    const double step_rad = two_pi * frequency_hz / rate_hz;
+    for (std::size_t begin = extent.begin; begin + block <= extent.end; begin += block / 2) {
+        Complex sum = 0.0,
+                phasor = std::polar(1.0, -std::fmod(step_rad * static_cast<double>(begin), two_pi));
+        const Complex turn = std::polar(1.0, -step_rad);
+        for (std::size_t n = 0; n < block; ++n) {
+            sum += channel[begin + n] * window[n] * phasor;
+            phasor *= turn;
+        }
+        phases.push_back(phases.empty()
+                             ? std::arg(sum)
+                             : phases.back() + std::remainder(std::arg(sum) - phases.back(), two_pi));
+        begins.push_back(begin);
+    }
+    if (phases.size() < 8) return;
+    // Two clocks give a slope; the median of the differences is not moved by one jump.
+    std::vector<double> differences;
+    for (std::size_t k = 1; k < phases.size(); ++k) differences.push_back(phases[k] - phases[k - 1]);
+    const double slope = median(differences);
+    for (std::size_t k = 0; k < phases.size(); ++k) phases[k] -= slope * static_cast<double>(k);
+    const double spread = spread_of(phases);
+    const double frame_rad = std::abs(std::remainder(step_rad, two_pi));
+    // Proven: a loss of seven frames would stand out.
+    if (spread * sure < 3.0 * frame_rad) report.proven = true;
+    const Step step = largest_step(phases, 6);
+    // Amplitude and clock wander slowly; only what is well beyond half a frame and the scatter is a jump.
+    const double limit = std::max(0.7 * frame_rad, sure * spread);
+    if (std::abs(step.size) < limit) return;
+    report.glitches.push_back(
+        {fmt::format("the {:g} Hz tone jumps by {:.2f} turns: frames were lost or repeated", frequency_hz,
+                     std::abs(step.size) / two_pi),
+         begins[step.at] + block / 2});
+}
+
+void check_tones(std::span<const double> channel, double rate_hz, std::vector<double> tones,
+                 ContentReport& report) {
+    std::sort(tones.begin(), tones.end());
+    // Two tones, one of each half: a loss of whole periods of one is none of the other. Middle frequencies
+    // tell most: low ones turn little in a frame, high ones are often filtered.
+    std::vector<double> chosen;
+    for (double target : {900.0, 3000.0}) {
+        const double best = *std::min_element(tones.begin(), tones.end(), [&](double a, double b) {
+            return std::abs(std::log(a / target)) < std::abs(std::log(b / target));
+        });
+        if (std::find(chosen.begin(), chosen.end(), best) == chosen.end()) chosen.push_back(best);
+    }
+    for (double hz : chosen) {
+        double spacing_hz = hz;
+        for (double other : tones)
+            if (other != hz) spacing_hz = std::min(spacing_hz, std::abs(other - hz));
+        check_tone(channel, rate_hz, hz, spacing_hz, report);
+        if (!report.whole()) return;
+    }
+}
+
+// ---- sweeps
+
+// Whole frames by which the recording lags the stimulus, and how clearly that stands out.
+struct Lag {
+    long long frames = 0;
+    double clarity = 0.0;
+};
+Lag lag_of(std::span<const double> channel, const std::vector<double>& sent) {
+    const std::size_t size = spectrum::fast_fft_size(channel.size() + sent.size());
+    auto bins = spectrum::forward_fft(channel, size);
+    const auto other = spectrum::forward_fft(sent, size);
+    double strongest = 0.0;
+    for (const Complex& x : other) strongest = std::max(strongest, std::norm(x));
+    // Whitened, so that the peak is sharp whatever the sweep's slope.
+    for (std::size_t k = 0; k < bins.size(); ++k)
+        bins[k] *= std::conj(other[k]) / (std::norm(other[k]) + 1e-6 * strongest);
+    const auto lags = spectrum::inverse_fft(bins, size);
+    const auto peak = std::max_element(lags.begin(), lags.end(),
+                                       [](double a, double b) { return std::abs(a) < std::abs(b); });
+    double sum = 0.0;
+    for (double x : lags) sum += x * x;
+    const auto at = static_cast<long long>(peak - lags.begin());
+    return {at >= static_cast<long long>(channel.size()) ? at - static_cast<long long>(size) : at,
+            std::abs(*peak) / std::sqrt(sum / static_cast<double>(size))};
+}
+
+void check_sweep(std::span<const double> channel, double rate_hz, const signal::Stimulus& stimulus,
+                 std::optional<double> expected, ContentReport& report) {
+    const auto& sweep = std::get<signal::Sweep>(stimulus.kind);
+    const auto sent = signal::render(stimulus);
+    Lag lag = lag_of(channel, sent);
+    if (expected) lag.frames = std::llround(*expected);
+    if (lag.clarity < 12.0 && !expected) return;
+    report.delay_frames = static_cast<double>(lag.frames);
+    const double constant_s = signal::sweep_time_constant_s(sweep, stimulus.length_s);
+    const auto block = static_cast<std::size_t>(std::max(256.0, static_cast<double>(sent.size()) / 400.0));
+
+    // Unrolled by the sweep itself, each block's phasor is the response at the frequency of that moment; from
+    // one block to the next its phase turns by the delay times the step in frequency: a delay for each
+    // moment.
+    std::vector<double> delays, sizes;
+    std::vector<std::size_t> frames;
+    Complex previous = 0.0;
+    double previous_hz = 0.0;
+    for (std::size_t begin = 0; begin + block <= sent.size(); begin += block) {
+        const long long start = static_cast<long long>(begin) + lag.frames;
+        if (start < 0 || start + static_cast<long long>(block) > static_cast<long long>(channel.size()))
+            continue;
+        const double middle_s = (static_cast<double>(begin) + 0.5 * static_cast<double>(block)) / rate_hz;
+        const double hz = sweep.from_hz * std::exp(middle_s / constant_s);
+        if (hz < 150.0 || hz < 1.5 * sweep.from_hz || hz > 0.93 * sweep.to_hz) continue;
+        Complex sum = 0.0;
+        for (std::size_t n = 0; n < block; ++n) {
+            const double t = static_cast<double>(begin + n) / rate_hz;
+            const double turns = sweep.from_hz * constant_s * std::exp(t / constant_s);
+            sum += channel[static_cast<std::size_t>(start) + n] *
+                   std::polar(1.0, -two_pi * std::fmod(turns, 1.0));
+        }
+        if (previous_hz > 0.0) {
+            const double turned = std::arg(sum * std::conj(previous));
+            delays.push_back(-turned / two_pi / (hz - previous_hz) * rate_hz);
+            sizes.push_back(std::log(std::max(std::abs(sum), 1e-30)));
+            frames.push_back(static_cast<std::size_t>(start));
+        }
+        previous = sum;
+        previous_hz = hz;
+    }
+    if (delays.size() < 24) return;
+    // Late delays are the surest (large steps in frequency): the spread falls with time, so the series is
+    // looked at in thirds, each with its own scatter.
+    const std::size_t third = delays.size() / 3;
+    double tightest = 1e9;
+    for (std::size_t part = 0; part < 3; ++part) {
+        const std::size_t first = part * third > 8 ? part * third - 8 : 0,
+                          last = std::min(delays.size(), (part + 1) * third + 8);
+        const std::vector<double> piece(delays.begin() + static_cast<std::ptrdiff_t>(first),
+                                        delays.begin() + static_cast<std::ptrdiff_t>(last));
+        const double spread = spread_of(piece);
+        tightest = std::min(tightest, spread);
+        const Step step = largest_step(piece, 8);
+        if (std::abs(step.size) > std::max(0.7, sure * spread)) {
+            report.glitches.push_back(
+                {fmt::format(
+                     "the delay steps by about {:.0f} frames within the sweep: frames were lost or repeated",
+                     std::abs(step.size)),
+                 frames[first + step.at]});
+            return;
+        }
+    }
+    const Step fade = largest_step(sizes, 6);
+    const double scatter = spread_of(sizes);
+    if (std::abs(fade.size) > std::max(1.4, sure * scatter)) {
+        report.glitches.push_back(
+            {"the sweep breaks off or slips within the recording: frames were lost or repeated",
+             frames[fade.at]});
+        return;
+    }
+    report.proven = tightest * sure < 3.5;
+}
+
+}  // namespace
+
+void check_continuity(std::span<const double> channel, double rate_hz, const signal::Stimulus& stimulus,
+                      std::optional<double> expected_delay_frames, ContentReport& report) {
+    if (std::holds_alternative<signal::Sweep>(stimulus.kind)) {
+        check_sweep(channel, rate_hz, stimulus, expected_delay_frames, report);
+        return;
+    }
+    const auto tones = signal::tone_frequencies_hz(stimulus);
+    if (!tones.empty() && static_cast<double>(channel.size()) > 16.0 * rate_hz / tones.front())
+        check_tones(channel, rate_hz, tones, report);
+}
+
+}  // namespace coldpin::rig

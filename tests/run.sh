@@ -1,0 +1,41 @@
+#!/usr/bin/env bash
+# Installs what the tests need, builds every variant and runs everything: format, lint, both compilers,
+# sanitizers, and the whole suite. Ends with ctest's summary of the suite.
+#   bash tests/run.sh          everything
+#   bash tests/run.sh quick    the release suite alone
+set -euo pipefail
+trap 'echo "tests/run.sh: stopped at line $LINENO: the command above failed" >&2' ERR
+
+root=$(cd "$(dirname "${BASH_SOURCE[0]}")/.." && pwd)
+cd "$root"
+started=$SECONDS
+say() { printf '\n== %s (%d s in)\n' "$1" $((SECONDS - started)); }
+sources() { git ls-files 'src/*.cpp' 'src/*.h' 'include/*.h' 'tests/*.cpp' 'tests/*.h'; }
+
+say "packages"
+bash docs/install-packages.sh tests
+
+say "release build"
+cmake --preset release -DCOLDPIN_TESTS=ON
+cmake --build --preset release
+
+if [ "${1:-all}" != quick ]; then
+  say "format"
+  sources | xargs clang-format --dry-run --Werror
+  say "the second compiler"
+  cmake --preset clang -DCOLDPIN_TESTS=OFF
+  cmake --build --preset clang
+  say "lint"
+  git ls-files 'src/*.cpp' | xargs -P "$(nproc)" -n 4 clang-tidy --quiet -p build/clang
+  say "address and undefined-behaviour checks"
+  cmake --preset asan -DCOLDPIN_TESTS=ON
+  cmake --build --preset asan
+  ctest --preset asan -j "$(nproc)" -LE 'soundcard|timing'
+  say "data-race checks"
+  cmake --preset tsan -DCOLDPIN_TESTS=ON
+  cmake --build --preset tsan --target rig_tests spectrum_tests
+  ctest --preset tsan -j "$(nproc)" -L threads
+fi
+
+say "the whole suite"
+ctest --preset release -j "$(nproc)"
