@@ -41,6 +41,12 @@ std::span<const double> reference_channel(const DescribedRecording& take, const 
     return {};
 }
 
+// With the generator muted the reference input hears the interface alone.
+std::span<const double> interface_beside(const DescribedRecording& take, const AnalysisOptions& options) {
+    return take.description.feed == "idle" && !options.channel ? reference_channel(take, options, true)
+                                                               : std::span<const double>{};
+}
+
 measure::LevelScale scale_of(const DescribedRecording& take, const AnalysisOptions& options) {
     measure::LevelScale scale;
     scale.full_scale_dbu =
@@ -159,6 +165,7 @@ Findings analyse_noise(const AnalysisInputs& inputs, const AnalysisOptions& opti
         require_same_rate(take, *inputs.interface_idle);
         question.interface_idle = device_channel(*inputs.interface_idle, options);
     }
+    question.interface_beside = interface_beside(take, options);
     return measure::noise(question);
 }
 
@@ -171,6 +178,7 @@ Findings analyse_hum(const AnalysisInputs& inputs, const AnalysisOptions& option
     question.band = options.band.value_or(measure::Band{});
     question.mains_hz = options.mains_hz;
     question.gain_db = gain_of(take, options);
+    question.interface_beside = interface_beside(take, options);
     return measure::hum(question);
 }
 

@@ -96,6 +96,26 @@ void bring_about(const rig::Wiring& wiring, const std::optional<rig::Wiring>& be
     session.confirm(wiring);
 }
 
+// A unit without rejection turns an ordinary common-mode drive into a clipped recording: that is a finding
+// about the unit, to be measured with less drive, not a reason to give up.
+rig::Capture capture_within_range(rig::CaptureRequest& request, rig::Session& session,
+                                  std::vector<std::string>& cautions) {
+    constexpr double step_db = 20.0;
+    constexpr int most_steps = 3;
+    for (int lowered = 0;; ++lowered) {
+        try {
+            return session.capture(request);
+        } catch (const rig::InputClipped&) {
+            if (request.feed != rig::Feed::common_mode || lowered == most_steps) throw;
+        }
+        request.drive_dbu -= step_db;
+        cautions.push_back(
+            fmt::format("{}: the recording clipped, so the common-mode drive was lowered to {:g} dBu: this "
+                        "unit rejects very little",
+                        request.label, request.drive_dbu));
+    }
+}
+
 }  // namespace
 
 Run perform(const profile::DeviceProfile& profile, const profile::RigFile& rig, rig::Session& session,
@@ -134,7 +154,7 @@ Run perform(const profile::DeviceProfile& profile, const profile::RigFile& rig, 
             request.gain_db = gain->second.value;
             request.gain_uncertainty_db = gain->second.uncertainty;
         }
-        rig::Capture capture = session.capture(request);
+        rig::Capture capture = capture_within_range(request, session, run.cautions);
         run.captures.push_back(
             {{capture.label, std::move(capture.recording), std::move(capture.description)}, capture.takes});
         for (auto& step : run.steps) {

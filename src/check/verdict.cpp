@@ -78,7 +78,10 @@ std::string figure_sentence(const profile::Requirement& requirement, const Figur
     const std::string spread = figure.bound == Bound::exact && figure.uncertainty > 0.0
                                    ? fmt::format(" ± {:.2g}{}", figure.uncertainty, unit)
                                    : "";
-    const char* end = verdict == Verdict::undecided ? ": the limit lies inside the uncertainty." : ".";
+    const char* end = ".";
+    if (verdict == Verdict::undecided)
+        end = figure.bound == Bound::exact ? ": the limit lies inside the uncertainty."
+                                           : ": more cannot be said with this rig.";
     return fmt::format("{} is {}{:.2f}{}{}; {}{}", words_of(requirement), bound, figure.value, unit, spread,
                        limits_in_words(requirement), end);
 }

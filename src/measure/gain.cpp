@@ -42,7 +42,8 @@ Findings gain(const GainQuestion& question) {
     const double statistics_db = spectrum::amplitude_uncertainty_db(tone.amplitude_std / tone.amplitude);
     const double level_uncertainty_db = spectrum::combine(statistics_db, question.scale.uncertainty_db);
     // The frequency asked for names the figure; what two clocks made of it stands beside.
-    Conditions conditions = {{"frequency_hz", question.frequency_hz}, {"drive_dbu", question.drive_dbu.value_db}};
+    Conditions conditions = {{"frequency_hz", question.frequency_hz},
+                             {"drive_dbu", question.drive_dbu.value_db}};
     if (tone.frequency_hz != question.frequency_hz) conditions.set("fitted_frequency_hz", tone.frequency_hz);
     findings.figures.push_back({"gain", level_dbu - question.drive_dbu.value_db, "dB",
                                 spectrum::combine(level_uncertainty_db, question.drive_dbu.uncertainty_db),

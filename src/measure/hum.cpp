@@ -56,6 +56,13 @@ HumPower hum_power(const spectrum::MainsFit& fit, const Band& band) {
     return power;
 }
 
+double hum_beside(const HumQuestion& question, double mains_hz) {
+    spectrum::MainsSearch search;
+    search.near_hz = mains_hz;
+    const auto fit = spectrum::fit_mains(question.interface_beside, question.rate_hz, search);
+    return fit.found ? hum_power(fit, question.band).mean_square : 0.0;
+}
+
 }  // namespace
 
 Findings hum(const HumQuestion& question) {
@@ -97,6 +104,19 @@ Findings hum(const HumQuestion& question) {
         return findings;
     }
 
+    // Hum that an input hears which has no unit on it is the interface's, through its ground or its supply.
+    const double beside = question.interface_beside.empty() ? 0.0 : hum_beside(question, fit.frequency_hz);
+    const bool drowned = beside > 0.5 * power.mean_square;
+    const Bound bound = drowned ? Bound::at_most : Bound::exact;
+    if (drowned)
+        findings.cautions.push_back(
+            "an input that hears the interface alone hums nearly as loud: the unit's hum is at most the "
+            "value given; look for a ground loop "
+            "through the interface first (computer on battery, one outlet strip)");
+    else if (beside > 0.1 * power.mean_square)
+        findings.cautions.push_back(
+            "an input that hears the interface alone hums too, less than 10 dB below: part of this hum may "
+            "be the interface's");
     findings.figures.push_back({"mains_frequency", fit.frequency_hz, "Hz",
                                 std::max(2.0 * fit.frequency_std_hz, 1e-6), 2.0, Bound::exact,
                                 Conditions{{"drift_hz", fit.drift_hz}}});
@@ -105,10 +125,10 @@ Findings hum(const HumQuestion& question) {
     const double uncertainty_db =
         spectrum::combine(spectrum::power_uncertainty_db(relative), question.scale.uncertainty_db);
     findings.figures.push_back(
-        {"hum_output", level, question.scale.unit(), uncertainty_db, 2.0, Bound::exact, in_band});
+        {"hum_output", level, question.scale.unit(), uncertainty_db, 2.0, bound, in_band});
     if (question.gain_db && question.scale.full_scale_dbu)
         findings.figures.push_back({"hum_input_referred", level - question.gain_db->value_db, "dBu",
-                                    input_uncertainty(question, uncertainty_db), 2.0, Bound::exact, in_band});
+                                    input_uncertainty(question, uncertainty_db), 2.0, bound, in_band});
     for (const auto& harmonic : fit.harmonics) {
         const double hz = harmonic.number * fit.frequency_hz;
         if (!harmonic.significant || !(harmonic.amplitude > 0.0) || !inside(question.band, hz)) continue;

@@ -133,13 +133,23 @@ Findings noise(const NoiseQuestion& question) {
         require_not_silent(question.interface_idle, "the recording of the interface alone");
         idle = noise_spectrum(question.interface_idle, question.rate_hz);
     }
+    std::optional<spectrum::AveragedSpectrum> beside;
+    if (!idle && !question.interface_beside.empty())
+        beside = noise_spectrum(question.interface_beside, question.rate_hz);
     Findings findings;
     findings.kind = "noise";
     bool drowned = false;
+    double least_excess_beside_db = 1e9;
     for (Weighting weighting : {Weighting::none, Weighting::a, Weighting::c, Weighting::itu468}) {
         const auto whole = weighted_power(spectrum, question.band, weighting);
         const auto alone = idle ? weighted_power(*idle, question.band, weighting) : spectrum::BandPower{};
-        const OwnPower own = own_power(whole, idle ? &alone : nullptr);
+        OwnPower own = own_power(whole, idle ? &alone : nullptr);
+        if (beside) {
+            const double excess_db = units::db_from_power_ratio(
+                whole.mean_square / weighted_power(*beside, question.band, weighting).mean_square);
+            least_excess_beside_db = std::min(least_excess_beside_db, excess_db);
+            if (excess_db < least_excess_db) own.bound = Bound::at_most;
+        }
         drowned = drowned || own.bound != Bound::exact;
         const double level = question.scale.level_from_sample_rms(std::sqrt(own.mean_square));
         const double uncertainty_db = spectrum::combine(spectrum::power_uncertainty_db(own.relative_std),
@@ -184,6 +194,12 @@ Findings noise(const NoiseQuestion& question) {
             "the interface's own noise is less than 3 dB below what was recorded: the unit's noise is at "
             "most the value given; raise its "
             "gain, or use a quieter input");
+    if (!drowned && least_excess_beside_db < 10.0)
+        findings.cautions.push_back(fmt::format(
+            "an input that hears the interface alone is only {:.1f} dB quieter: up to {:.1f} dB of this "
+            "noise may be the interface's",
+            least_excess_beside_db,
+            -units::db_from_power_ratio(1.0 - units::power_ratio_from_db(-least_excess_beside_db))));
     if (question.gain_db && !question.scale.full_scale_dbu)
         findings.cautions.push_back(
             "noise at the input needs volts: without --input-full-scale-dbu only the level in dBFS is known");

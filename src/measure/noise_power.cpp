@@ -18,16 +18,51 @@ spectrum::AveragedSpectrum noise_spectrum(std::span<const double> samples, doubl
     return spectrum::averaged_spectrum(samples, rate_hz, settings);
 }
 
+// The variance of a band's power comes from the noise alone, and from the noise beating with each line: a
+// line's own power does not scatter. Lines are what stands above a running median of the density.
+std::vector<double> noise_under_lines(const spectrum::AveragedSpectrum& spectrum) {
+    const auto& density = spectrum.density;
+    const std::size_t reach =
+        static_cast<std::size_t>(6.0 * spectrum::main_lobe_half_width_bins(spectrum.window));
+    const double shrink = std::pow(1.0 - 2.0 / (9.0 * spectrum.degrees_of_freedom), 3);
+    std::vector<double> floor(density.size()), around;
+    const std::size_t stride = std::max<std::size_t>(1, reach / 3);
+    for (std::size_t k = 0; k < density.size(); k += stride) {
+        // Symmetric, so that a slope does not lift the median; narrower towards 0 Hz.
+        const std::size_t half = std::min(
+            {reach, std::max<std::size_t>(k, 2), density.size() - 1 - std::min(k, density.size() - 1) + 2});
+        const auto first = static_cast<std::ptrdiff_t>(k > half ? k - half : 0);
+        const auto last = static_cast<std::ptrdiff_t>(std::min(density.size(), k + half + 1));
+        around.assign(density.begin() + first, density.begin() + last);
+        const auto middle = around.begin() + static_cast<std::ptrdiff_t>(around.size() / 2);
+        std::nth_element(around.begin(), middle, around.end());
+        for (std::size_t j = k; j < std::min(density.size(), k + stride); ++j) floor[j] = *middle / shrink;
+    }
+    return floor;
+}
+
 spectrum::BandPower weighted_power(const spectrum::AveragedSpectrum& spectrum, const Band& band,
                                    spectrum::Weighting weighting) {
-    auto power = spectrum::band_power(spectrum, band.low_hz, band.high_hz,
-                                      [&](double hz) { return spectrum::weighting_gain(weighting, hz); });
+    const auto weight = [&](double hz) { return spectrum::weighting_gain(weighting, hz); };
+    auto power = spectrum::band_power(spectrum, band.low_hz, band.high_hz, weight);
+    const std::vector<double> floor = noise_under_lines(spectrum);
+    power.variance = 0.0;
+    for (std::size_t k = 0; k < floor.size(); ++k) {
+        const double hz = static_cast<double>(k) * spectrum.bin_hz;
+        const double inside = std::min(hz + 0.5 * spectrum.bin_hz, band.high_hz) -
+                              std::max(hz - 0.5 * spectrum.bin_hz, band.low_hz);
+        if (inside <= 0.0) continue;
+        const double w = weight(hz), w4 = w * w * w * w;
+        // What lies up to four times over the median is the noise's own scatter, not a line.
+        const double line = spectrum.density[k] > 4.0 * floor[k] ? spectrum.density[k] - floor[k] : 0.0;
+        const double noise = line > 0.0 ? floor[k] : std::max(spectrum.density[k], floor[k]);
+        power.variance += w4 * noise * (noise + 2.0 * line) * inside;
+    }
     // Segments at the ends are covered by fewer windows than those in the middle, and the averaging of bins
     // that were estimated themselves adds its share: together a loss of effective length that is at most one
     // segment.
     const double segment_s = 1.0 / spectrum.bin_hz;
-    power.variance *=
-        spectrum.duration_s / std::max(spectrum.duration_s - 0.7 * segment_s, 0.3 * spectrum.duration_s);
+    power.variance /= std::max(spectrum.duration_s - 0.7 * segment_s, 0.3 * spectrum.duration_s);
     return power;
 }
 

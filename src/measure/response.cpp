@@ -175,7 +175,7 @@ void add_curves(Findings& findings, const Transfer& transfer, const Reference& r
         const double spread = hz == reference.frequency_hz
                                   ? 0.0
                                   : spectrum::combine(spectrum::amplitude_uncertainty_db(point.std / size),
-                                                      2.0 * reference.std_db);
+                                                      2.0 * reference.std_db, 2.0 * method_std_db);
         magnitude.uncertainty.push_back(spread);
         const double angle = std::arg(point.value * std::polar(1.0, two_pi * hz * rest_s));
         unwrapped = phase.x.empty() ? angle : unwrapped + std::remainder(angle - unwrapped, two_pi);

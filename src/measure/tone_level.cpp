@@ -55,7 +55,7 @@ std::vector<double> without_hum(std::span<const double> stretch, double rate_hz,
     if (!mains.found) return samples;
     const double number = std::max(1.0, std::round(frequency_hz / mains.frequency_hz));
     const double distance_hz = std::abs(frequency_hz - number * mains.frequency_hz);
-    if (distance_hz < 4.0 * rate_hz / static_cast<double>(samples.size())) {
+    if (distance_hz < 1.5 * rate_hz / static_cast<double>(samples.size())) {
         cautions.push_back(
             fmt::format("the tone at {:g} Hz lies on harmonic {:g} of the mains ({:.2f} Hz): hum and tone "
                         "cannot be told apart there; use "

@@ -67,7 +67,7 @@ void add_row(std::string& out, const Judgement& judgement) {
         why.empty() ? "" : "has-why",
         escaped(quantity_text(judgement.requirement.quantity, judgement.requirement.conditions)),
         escaped(limit_text(judgement.requirement)), measured, band_picture_svg(judgement),
-        has_margin ? fmt::format("{:+.2f}", *judgement.margin) : "", word, verdict_mark(judgement.verdict));
+        has_margin ? margin_text(*judgement.margin) : "", word, verdict_mark(judgement.verdict));
     if (!why.empty()) out += fmt::format("<tr class=\"why\"><td colspan=\"6\">{}</td></tr>\n", escaped(why));
 }
 

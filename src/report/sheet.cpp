@@ -65,7 +65,7 @@ std::string measured_cell(const Judgement& judgement) {
 
 std::string margin_cell(const Judgement& judgement) {
     if (!judgement.margin || judgement.requirement.quantity == "polarity") return "";
-    return fmt::format("{:+.2f}", *judgement.margin);
+    return margin_text(*judgement.margin);
 }
 
 void add_requirements(std::string& out, const check::Run& run, const SheetStyle& style, const Paint& paint) {

@@ -94,11 +94,20 @@ std::string uncertainty_text(const measure::Figure& figure) {
     return "± " + number_text(figure.uncertainty * scaled.factor, scaled.decimals);
 }
 
+std::string margin_text(double margin) {
+    const double size = std::abs(margin);
+    return fmt::format("{:+.{}f}", margin, size >= 100.0 ? 0 : (size >= 10.0 ? 1 : 2));
+}
+
 std::string limit_text(const profile::Requirement& requirement) {
     const std::string& unit = requirement.unit;
     if (!requirement.mask.empty()) return "mask";
     if (requirement.quantity == "polarity" && requirement.min && *requirement.min > 0.0) return "upright";
     if (requirement.quantity == "polarity" && requirement.max && *requirement.max < 0.0) return "inverted";
+    if (unit == "Hz" && requirement.min && !requirement.max)
+        return "at least " + frequency_text(*requirement.min);
+    if (unit == "Hz" && requirement.max && !requirement.min)
+        return "at most " + frequency_text(*requirement.max);
     if (requirement.min && requirement.max)
         return with_unit(limit_number(*requirement.min) + " to " + limit_number(*requirement.max), unit);
     if (requirement.min) return with_unit("at least " + limit_number(*requirement.min), unit);

@@ -188,7 +188,7 @@ Capture Session::capture(const CaptureRequest& request) {
         const auto at_end_stop = std::count_if(device_samples.begin(), device_samples.end(),
                                                [](double x) { return std::abs(x) >= converter_full_scale; });
         if (at_end_stop >= 2)
-            throw CannotMeasure(
+            throw InputClipped(
                 fmt::format("{}: the interface's input clips ({} samples at full scale): turn its input gain "
                             "down, or the unit's; then calibrate again",
                             request.label, at_end_stop));

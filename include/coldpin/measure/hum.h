@@ -16,6 +16,8 @@ struct HumQuestion {
     Band band;
     std::optional<double> mains_hz;  // where to look; found by itself otherwise
     std::optional<KnownLevel> gain_db;
+    std::span<const double> interface_beside =
+        {};  // as in NoiseQuestion: hum heard there too is the interface's
 };
 
 // Figures: mains_frequency (Hz, mean over the recording), hum_output (RMS sum of all mains harmonics in the

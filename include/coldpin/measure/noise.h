@@ -18,6 +18,10 @@ struct NoiseQuestion {
     std::optional<double> source_ohms;
     double temperature_c = 20.0;
     std::span<const double> interface_idle = {};  // interface alone, input terminated, same input gain
+    // Another input of the same interface that hears the interface alone at the same moment (a reference
+    // input with the generator muted): never subtracted, but when it is nearly as loud the figure is only a
+    // bound.
+    std::span<const double> interface_beside = {};
 };
 
 // Figures: noise_output with conditions.weighting none, A, C, 468 and conditions.detector "rms"; with a gain

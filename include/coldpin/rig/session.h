@@ -12,8 +12,15 @@
 #include "coldpin/rig/setup.h"
 #include "coldpin/signal/description.h"
 #include "coldpin/signal/recording.h"
+#include "coldpin/units/error.h"
 
 namespace coldpin::rig {
+
+// The interface's input was at its end stop. A plan may try again with less drive.
+class InputClipped : public CannotMeasure {
+  public:
+    using CannotMeasure::CannotMeasure;
+};
 
 struct CaptureRequest {
     std::string label;  // names recordings: "gain-40dB"
