@@ -22,8 +22,16 @@ namespace {
 std::atomic<bool> stop_requested{false};
 static_assert(std::atomic<bool>::is_always_lock_free, "the handler may only touch lock-free atomics");
 
+// A shell or a timer may send one request twice at once, to the group and to the process: only one that comes
+// a second later means that the orderly end is not wanted.
+std::atomic<std::time_t> first_request{0};
+
 extern "C" void on_stop_signal(int) {
-    if (stop_requested.exchange(true)) std::_Exit(3);
+    const std::time_t now = std::time(nullptr);
+    if (!stop_requested.exchange(true))
+        first_request.store(now);
+    else if (now - first_request.load() > 1)
+        std::_Exit(3);
 }
 
 bool is_terminal(std::FILE* stream) {

@@ -2,20 +2,18 @@
 
 #include <algorithm>
 #include <cmath>
-#include <numbers>
 
 #include <fmt/core.h>
 
 #include "coldpin/measure/clipping.h"
 #include "coldpin/measure/transfer.h"
-#include "coldpin/spectrum/mains.h"
-#include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/spectrum/statistics.h"
 #include "coldpin/spectrum/tone_extent.h"
 #include "coldpin/units/error.h"
 #include "coldpin/units/frequency_grid.h"
 #include "coldpin/units/level.h"
 
+#include "tone_fit.h"
 #include "tone_level.h"
 
 namespace coldpin::measure {
@@ -115,44 +113,13 @@ Extent common_mode_extent(std::span<const double> samples, const CmrrQuestion& q
     return {0, samples.size(), 0.0, true};
 }
 
-struct ToneFit {
-    std::vector<double> raw;  // amplitude per tone
-    std::vector<double> std;
-};
-
-ToneFit fit_tones(std::span<const double> stretch, double rate_hz, std::span<const double> frequencies_hz) {
-    const auto fit = spectrum::fit_sines(stretch, rate_hz, frequencies_hz);
-    std::vector<double> rest(stretch.begin(), stretch.end());
-    for (std::size_t k = 0; k < frequencies_hz.size(); ++k) {
-        std::complex<double> phasor = fit.phasors[k];
-        const std::complex<double> turn =
-            std::polar(1.0, 2.0 * std::numbers::pi * frequencies_hz[k] / rate_hz);
-        for (double& x : rest) {
-            x -= phasor.real();
-            phasor *= turn;
-        }
-    }
-    ToneFit tones;
-    const double length_s = static_cast<double>(stretch.size()) / rate_hz;
-    for (std::size_t k = 0; k < frequencies_hz.size(); ++k) {
-        const double density = spectrum::noise_density_near(rest, rate_hz, frequencies_hz[k],
-                                                            std::max(15.0, 0.05 * frequencies_hz[k]));
-        tones.raw.push_back(std::abs(fit.phasors[k]));
-        tones.std.push_back(std::sqrt(density / length_s));
-    }
-    return tones;
-}
-
-// A tone on a mains harmonic measures hum: the hum of the recording before it is not known, so say so.
-void warn_of_hum(std::span<const double> stretch, const CmrrQuestion& question,
+// A tone on a mains harmonic measures hum: the hum there is not known apart, so say so.
+void warn_of_hum(double mains_hz, double length_s, const CmrrQuestion& question,
                  std::vector<std::string>& cautions) {
-    if (static_cast<double>(stretch.size()) < question.rate_hz) return;
-    const auto mains = spectrum::fit_mains(stretch, question.rate_hz);
-    if (!mains.found) return;
+    if (!(mains_hz > 0.0)) return;
     for (double hz : question.frequencies_hz) {
-        const double number = std::round(hz / mains.frequency_hz);
-        if (number >= 1.0 && std::abs(hz - number * mains.frequency_hz) <
-                                 3.0 * question.rate_hz / static_cast<double>(stretch.size()))
+        const double number = std::round(hz / mains_hz);
+        if (number >= 1.0 && std::abs(hz - number * mains_hz) < 1.5 / length_s)
             cautions.push_back(
                 fmt::format("the tone at {:g} Hz lies on harmonic {:g} of the mains: hum counts as lack of "
                             "rejection there; move it between the harmonics",
@@ -171,15 +138,16 @@ void measure_tones(Findings& findings, const CmrrQuestion& question) {
     const Extent extent = common_mode_extent(common_mode, question, differential_extent, findings.cautions);
     const auto stretch = std::span(common_mode).subspan(extent.begin, extent.end - extent.begin);
     const auto common = fit_tones(stretch, question.rate_hz, question.frequencies_hz);
-    warn_of_hum(stretch, question, findings.cautions);
+    warn_of_hum(common.mains_hz, static_cast<double>(stretch.size()) / question.rate_hz, question,
+                findings.cautions);
     for (std::size_t k = 0; k < question.frequencies_hz.size(); ++k) {
-        if (!(differential.raw[k] > 8.0 * differential.std[k]))
+        if (!(std::abs(differential.phasors[k]) > 8.0 * differential.std[k]))
             throw CannotMeasure(fmt::format("the differential recording holds no clear tone at {:g} Hz",
                                             question.frequencies_hz[k]));
-        const double scale = drive_ratio(question) / differential.raw[k];
-        const Claim claim = claim_from(unbiased(common.raw[k] * scale, common.std[k] * scale),
-                                       differential.std[k] / differential.raw[k], drive_uncertainty(question),
-                                       question.rejection_limit_db);
+        const double scale = drive_ratio(question) / std::abs(differential.phasors[k]);
+        const Claim claim = claim_from(unbiased(std::abs(common.phasors[k]) * scale, common.std[k] * scale),
+                                       differential.std[k] / std::abs(differential.phasors[k]),
+                                       drive_uncertainty(question), question.rejection_limit_db);
         findings.figures.push_back(figure_from(claim, question.frequencies_hz[k], question));
     }
 }

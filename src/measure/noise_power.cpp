@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numbers>
 
 #include <fmt/core.h>
 
@@ -16,6 +17,20 @@ spectrum::AveragedSpectrum noise_spectrum(std::span<const double> samples, doubl
     spectrum::WelchSettings settings;
     settings.segment = segment;
     return spectrum::averaged_spectrum(samples, rate_hz, settings);
+}
+
+// Second moment of the window's power spectrum: sum (w')^2 / sum w^2 / (2 pi)^2, by Parseval.
+double smear_variance_hz2(const spectrum::AveragedSpectrum& spectrum) {
+    constexpr std::size_t points = 2048;
+    const auto window = spectrum::window_samples(spectrum.window, points);
+    double slopes = 0.0, squares = 0.0;
+    for (std::size_t j = 0; j < points; ++j) {
+        const double slope = 0.5 * (window[(j + 1) % points] - window[(j + points - 1) % points]) *
+                             static_cast<double>(points);
+        slopes += slope * slope;
+        squares += window[j] * window[j];
+    }
+    return slopes / squares / (4.0 * std::numbers::pi * std::numbers::pi) * spectrum.bin_hz * spectrum.bin_hz;
 }
 
 // The variance of a band's power comes from the noise alone, and from the noise beating with each line: a
@@ -43,7 +58,17 @@ std::vector<double> noise_under_lines(const spectrum::AveragedSpectrum& spectrum
 
 spectrum::BandPower weighted_power(const spectrum::AveragedSpectrum& spectrum, const Band& band,
                                    spectrum::Weighting weighting) {
-    const auto weight = [&](double hz) { return spectrum::weighting_gain(weighting, hz); };
+    // A window smears each line over a few bins, and a steep weighting would then weigh it by the mean of its
+    // slope. The weight that has the right mean after smearing is w^2 less half the smearing's variance times
+    // its second derivative.
+    const double variance_hz2 = smear_variance_hz2(spectrum), step = spectrum.bin_hz;
+    const auto square = [&](double hz) { return std::pow(spectrum::weighting_gain(weighting, hz), 2); };
+    const auto weight = [&](double hz) {
+        if (weighting == spectrum::Weighting::none || hz < 2.0 * step)
+            return spectrum::weighting_gain(weighting, hz);
+        const double bend = (square(hz + step) - 2.0 * square(hz) + square(hz - step)) / (step * step);
+        return std::sqrt(std::max(square(hz) - 0.5 * variance_hz2 * bend, 0.0));
+    };
     auto power = spectrum::band_power(spectrum, band.low_hz, band.high_hz, weight);
     const std::vector<double> floor = noise_under_lines(spectrum);
     power.variance = 0.0;
@@ -79,14 +104,16 @@ void describe_lines(const spectrum::AveragedSpectrum& spectrum, const Band& band
     const auto peak = std::max_element(begin, end);
     const auto at = static_cast<std::size_t>(peak - spectrum.density.begin());
     const auto lobe = static_cast<std::size_t>(spectrum::main_lobe_half_width_bins(spectrum.window));
-    double line = 0.0;
-    for (std::size_t k = at > first + lobe ? at - lobe : first; k <= std::min(last, at + lobe); ++k)
+    double line = 0.0, moment = 0.0;
+    for (std::size_t k = at > first + lobe ? at - lobe : first; k <= std::min(last, at + lobe); ++k) {
         line += spectrum.density[k];
+        moment += spectrum.density[k] * static_cast<double>(k);
+    }
     if (line > 0.5 * total)
         cautions.push_back(
             fmt::format("more than half of the power is one line near {:.1f} Hz: hum or a tone, not noise; "
                         "it is included in the levels",
-                        static_cast<double>(at) * spectrum.bin_hz));
+                        moment / line * spectrum.bin_hz));
 }
 
 }  // namespace coldpin::measure

@@ -2,20 +2,20 @@
 
 #include <algorithm>
 #include <cmath>
-#include <numbers>
 
 #include <fmt/core.h>
 
 #include "coldpin/spectrum/fft.h"
-#include "coldpin/spectrum/mains.h"
 #include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/units/error.h"
+
+#include "tone_fit.h"
 
 namespace coldpin::measure {
 
 namespace {
 
-constexpr double two_pi = 2.0 * std::numbers::pi;
+constexpr double settling_s = 0.1;  // a 20 Hz corner still answers the beginning for 50 ms
 
 // Lag of the largest cross-correlation. A multitone repeats, so neighbouring periods come close; being off by
 // one of them leaves the ratios at the tones as they are.
@@ -43,7 +43,7 @@ Transfer tone_transfer(const TransferQuestion& question) {
     const long long lag = question.known_delay_frames
                               ? std::llround(*question.known_delay_frames)
                               : correlation_lag(question.recording, question.sent, likeness);
-    const auto guard = static_cast<long long>((question.stimulus->fade_s + 0.02) * question.rate_hz);
+    const auto guard = static_cast<long long>((question.stimulus->fade_s + settling_s) * question.rate_hz);
     const long long begin = std::max(0LL, lag) + guard;
     const long long end = std::min(static_cast<long long>(question.recording.size()),
                                    lag + static_cast<long long>(question.sent.size())) -
@@ -61,28 +61,16 @@ Transfer tone_transfer(const TransferQuestion& question) {
     result.low_hz = tones.front();
     result.high_hz = tones.back();
     result.delay_frames = static_cast<double>(lag);
-    const auto heard = spectrum::fit_sines(stretch, question.rate_hz, tones);
+    const ToneFit heard = fit_tones(stretch, question.rate_hz, tones);
     const auto played = spectrum::fit_sines(sent, question.rate_hz, tones);
-    std::vector<double> rest(stretch.begin(), stretch.end());
-    for (std::size_t k = 0; k < tones.size(); ++k) {
-        const std::complex<double> turn = std::polar(1.0, two_pi * tones[k] / question.rate_hz);
-        std::complex<double> phasor = heard.phasors[k];
-        for (std::size_t n = 0; n < rest.size(); ++n, phasor *= turn) rest[n] -= phasor.real();
-    }
-    const double length_s = static_cast<double>(frames) / question.rate_hz;
     double explained = 0.0;
     for (std::size_t k = 0; k < tones.size(); ++k) {
-        const double density =
-            spectrum::noise_density_near(rest, question.rate_hz, tones[k], std::max(20.0, 0.03 * tones[k]));
         const double sent_amplitude = std::abs(played.phasors[k]);
         if (!(sent_amplitude > 0.0))
             throw CannotMeasure("what was sent does not hold the tones that its description names");
-        TransferPoint point;
-        point.value = heard.phasors[k] / played.phasors[k];
-        point.std = std::sqrt(density / length_s) / sent_amplitude;
-        explained += std::norm(heard.phasors[k]) / std::max(density / length_s, 1e-300);
+        explained += std::norm(heard.phasors[k]) / std::max(heard.std[k] * heard.std[k], 1e-300);
         result.tones_hz.push_back(tones[k]);
-        result.tones.push_back(point);
+        result.tones.push_back({heard.phasors[k] / played.phasors[k], 0.0, heard.std[k] / sent_amplitude});
     }
     if (!question.known_delay_frames && explained < 50.0 * static_cast<double>(tones.size()))
         throw CannotMeasure(

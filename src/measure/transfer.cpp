@@ -58,7 +58,9 @@ Band energy_band(const TransferQuestion& question, const std::vector<double>& en
         for (std::size_t j = k; j < k + width; ++j) sum += energy[j];
         smooth.push_back(sum);
     }
-    const double limit = *std::max_element(smooth.begin(), smooth.end()) * 3e-5;
+    // A burst has one hump of spectrum, and only that is of use.
+    const bool burst = question.stimulus && std::holds_alternative<signal::Burst>(question.stimulus->kind);
+    const double limit = *std::max_element(smooth.begin(), smooth.end()) * (burst ? 0.05 : 3e-5);
     const auto first = std::find_if(smooth.begin(), smooth.end(), [&](double e) { return e > limit; });
     const auto last = std::find_if(smooth.rbegin(), smooth.rend(), [&](double e) { return e > limit; });
     const double step_hz = static_cast<double>(width) * bin_hz;
@@ -313,7 +315,8 @@ Transfer transfer(const TransferQuestion& question) {
     const double bin_hz = question.rate_hz / static_cast<double>(d.size);
     const Band band = energy_band(question, d.energy, bin_hz);
     const double weakest = weakest_energy(d, band, bin_hz);
-    d.floor = search_floor * weakest;
+    // A sweep's energy falls steeply outside its band; of other stimuli nothing is known there.
+    d.floor = (is_sweep(question) ? search_floor : 0.1) * weakest;
     std::vector<double> recording(question.recording.begin(), question.recording.end());
     divide(d, recording);
     Transfer result;
@@ -326,7 +329,7 @@ Transfer transfer(const TransferQuestion& question) {
         require_found(d, delay);
         require_whole(question, delay);
     }
-    d.floor = estimate_floor * weakest;
+    d.floor = (is_sweep(question) ? estimate_floor : 1e-3) * weakest;
     divide(d, recording);
     // Hum is found in what the response leaves of the recording; the response in turn takes in a little hum,
     // so both are estimated in turns. Each turn leaves a few per cent of what the one before did.

@@ -4,8 +4,10 @@
 #include <cmath>
 #include <complex>
 #include <numbers>
+#include <utility>
 #include <vector>
 
+#include <Eigen/Dense>
 #include <fmt/core.h>
 
 #include "coldpin/spectrum/fft.h"
@@ -65,47 +67,95 @@ Step largest_step(const std::vector<double>& series, std::size_t reach) {
 
 // ---- tones
 
+struct Blocks {
+    std::vector<Complex> phasors;
+    std::vector<std::size_t> begins;
+    std::size_t length = 0;
+};
+
+// Phasors of a tone in half-overlapping blocks, turned back to the recording's beginning.
+Blocks tone_blocks(std::span<const double> channel, double step_rad, std::size_t length) {
+    const std::vector<double> window = spectrum::window_samples(spectrum::Window::blackman_harris, length);
+    Blocks blocks;
+    blocks.length = length;
+    const Complex turn = std::polar(1.0, -step_rad);
+    for (std::size_t begin = 0; begin + length <= channel.size(); begin += length / 2) {
+        Complex sum = 0.0,
+                phasor = std::polar(1.0, -std::fmod(step_rad * static_cast<double>(begin), two_pi));
+        for (std::size_t n = 0; n < length; ++n) {
+            sum += channel[begin + n] * window[n] * phasor;
+            phasor *= turn;
+        }
+        blocks.phasors.push_back(sum);
+        blocks.begins.push_back(begin);
+    }
+    return blocks;
+}
+
+// The blocks in which the tone sounds: those of the stretch found, and on from there while the tone stays
+// half as loud. A jump by half a turn ends the stretch that is coherent, but not the tone.
+std::pair<std::size_t, std::size_t> sounding(const Blocks& blocks, const spectrum::Extent& extent) {
+    std::vector<double> sizes;
+    std::size_t first = blocks.begins.size(), last = 0;
+    for (std::size_t k = 0; k < blocks.begins.size(); ++k) {
+        if (blocks.begins[k] < extent.begin || blocks.begins[k] + blocks.length > extent.end) continue;
+        sizes.push_back(std::abs(blocks.phasors[k]));
+        first = std::min(first, k);
+        last = k + 1;
+    }
+    if (sizes.empty()) return {0, 0};
+    const double half = 0.5 * median(sizes);
+    const auto loud = [&](std::size_t k) { return std::abs(blocks.phasors[k]) > half; };
+    // The blocks that hold the jump itself may be quiet: up to three of them are stepped over.
+    constexpr std::size_t gap = 3;
+    for (std::size_t step = 1; step <= gap + 1 && first >= step; ++step)
+        if (loud(first - step)) {
+            first -= step;
+            step = 0;
+        }
+    for (std::size_t step = 0; step <= gap && last + step < blocks.phasors.size(); ++step)
+        if (loud(last + step)) {
+            last += step + 1;
+            step = static_cast<std::size_t>(-1);
+        }
+    // The outermost blocks hold the fades.
+    return last - first > 8 ? std::pair{first + 2, last - 2} : std::pair{first, last};
+}
+
 void check_tone(std::span<const double> channel, double rate_hz, double frequency_hz, double spacing_hz,
                 ContentReport& report) {
     const auto extent = spectrum::find_tone(channel, rate_hz, frequency_hz, 0.02);
     if (!extent.found) return;
     const double length_s = std::max({8.0 / frequency_hz, 6.0 / spacing_hz, 0.01});
-    const auto block = static_cast<std::size_t>(length_s * rate_hz);
-    const std::vector<double> window = spectrum::window_samples(spectrum::Window::blackman_harris, block);
-    std::vector<double> phases;
-    std::vector<std::size_t> begins;
     const double step_rad = two_pi * frequency_hz / rate_hz;
-    for (std::size_t begin = extent.begin; begin + block <= extent.end; begin += block / 2) {
-        Complex sum = 0.0,
-                phasor = std::polar(1.0, -std::fmod(step_rad * static_cast<double>(begin), two_pi));
-        const Complex turn = std::polar(1.0, -step_rad);
-        for (std::size_t n = 0; n < block; ++n) {
-            sum += channel[begin + n] * window[n] * phasor;
-            phasor *= turn;
-        }
-        phases.push_back(phases.empty()
-                             ? std::arg(sum)
-                             : phases.back() + std::remainder(std::arg(sum) - phases.back(), two_pi));
-        begins.push_back(begin);
+    const Blocks blocks = tone_blocks(channel, step_rad, static_cast<std::size_t>(length_s * rate_hz));
+    const auto [first, last] = sounding(blocks, extent);
+    if (last - first < 8) return;
+    std::vector<double> phases;
+    for (std::size_t k = first; k < last; ++k) {
+        const double angle = std::arg(blocks.phasors[k]);
+        phases.push_back(phases.empty() ? angle
+                                        : phases.back() + std::remainder(angle - phases.back(), two_pi));
     }
-    if (phases.size() < 8) return;
     // Two clocks give a slope; the median of the differences is not moved by one jump.
     std::vector<double> differences;
     for (std::size_t k = 1; k < phases.size(); ++k) differences.push_back(phases[k] - phases[k - 1]);
     const double slope = median(differences);
     for (std::size_t k = 0; k < phases.size(); ++k) phases[k] -= slope * static_cast<double>(k);
     const double spread = spread_of(phases);
+    // Phases that scatter that much wander by themselves when they are unwrapped: nothing can be said.
+    constexpr double too_faint_rad = 0.3;
+    if (spread > too_faint_rad) return;
     const double frame_rad = std::abs(std::remainder(step_rad, two_pi));
     // Proven: a loss of seven frames would stand out.
     if (spread * sure < 3.0 * frame_rad) report.proven = true;
     const Step step = largest_step(phases, 6);
     // Amplitude and clock wander slowly; only what is well beyond half a frame and the scatter is a jump.
-    const double limit = std::max(0.7 * frame_rad, sure * spread);
-    if (std::abs(step.size) < limit) return;
+    if (std::abs(step.size) < std::max(0.7 * frame_rad, sure * spread)) return;
     report.glitches.push_back(
         {fmt::format("the {:g} Hz tone jumps by {:.2f} turns: frames were lost or repeated", frequency_hz,
                      std::abs(step.size) / two_pi),
-         begins[step.at] + block / 2});
+         blocks.begins[first + step.at] + blocks.length / 2});
 }
 
 void check_tones(std::span<const double> channel, double rate_hz, std::vector<double> tones,
@@ -157,7 +207,10 @@ Lag lag_of(std::span<const double> channel, const std::vector<double>& sent) {
 
 // A part of the sweep, in blocks: for each the delay of that moment (frames) and the size of what was heard.
 struct Unrolled {
-    std::vector<double> turns_rad, delays, log_sizes;
+    double rate_hz = 0.0;
+    std::vector<double> hz, step_hz,
+        turns_rad;  // the later block's frequency, the step to it, the phase's turn
+    std::vector<double> delays, log_sizes;
     std::vector<std::size_t> frames;
 };
 
@@ -171,6 +224,7 @@ Unrolled unroll(std::span<const double> channel, double rate_hz, const signal::S
     // Bell-shaped, so that the image at twice the frequency averages out over a few periods.
     const std::vector<double> window = spectrum::window_samples(spectrum::Window::hann, block);
     Unrolled unrolled;
+    unrolled.rate_hz = rate_hz;
     Complex previous = 0.0;
     double previous_hz = 0.0;
     for (std::size_t begin = 0; begin + block <= sent_frames; begin += block) {
@@ -232,28 +286,50 @@ double check_unrolled(const Unrolled& unrolled, ContentReport& report) {
     return tightest;
 }
 
-// At low frequencies a filter's group delay changes by many frames from block to block, smoothly; a loss
-// shows as a single jump in phase. Looked at in pairs, since a loss may fall between two blocks.
+// At low frequencies a filter's group delay changes by many frames from block to block, but as a smooth
+// function of frequency: constant, 1/f^2, 1/f^4 and 1/f^6 hold any ordinary high-pass. A loss adds a constant
+// from some block on. For each place the least-squares fit with that step is compared with the one without.
 void check_low_end(const Unrolled& unrolled, ContentReport& report) {
-    constexpr double least_jump_rad = 0.025;
-    const auto& turns = unrolled.turns_rad;
-    if (turns.size() < 12) return;
-    const double spread = spread_of(turns);
-    for (std::size_t k = 0; k + 1 < turns.size(); ++k) {
-        std::vector<double> around;
-        for (std::size_t j = k > 4 ? k - 4 : 0; j < std::min(turns.size(), k + 6); ++j)
-            if (j != k && j != k + 1) around.push_back(turns[j]);
-        const double usual = median(around);
-        // The ends of the series have neighbours on one side only, where a smooth course is off its median.
-        const double slope = std::abs(around.back() - around.front());
-        const double jump = turns[k] + turns[k + 1] - 2.0 * usual;
-        if (std::abs(jump) < std::max(least_jump_rad, 2.0 * sure * spread) + 2.0 * slope) continue;
-        report.glitches.push_back(
-            {fmt::format("the sweep's phase jumps by {:.2f} rad: frames were lost or repeated",
-                         std::abs(jump)),
-             unrolled.frames[k]});
-        return;
+    constexpr double least_frames = 1.0;
+    constexpr double residual_ratio = 0.35;  // what a mere misfit of the smooth part never reaches
+    const auto count = static_cast<Eigen::Index>(unrolled.turns_rad.size());
+    if (count < 14) return;
+    const double reference_hz = unrolled.hz.back();
+    Eigen::MatrixXd smooth(count, 4);
+    Eigen::VectorXd turns(count);
+    for (Eigen::Index k = 0; k < count; ++k) {
+        const auto i = static_cast<std::size_t>(k);
+        const double inverse = std::pow(reference_hz / unrolled.hz[i], 2);
+        double term = unrolled.step_hz[i];
+        for (Eigen::Index c = 0; c < 4; ++c, term *= inverse) smooth(k, c) = term;
+        turns(k) = unrolled.turns_rad[i];
     }
+    const double without = (turns - smooth * smooth.colPivHouseholderQr().solve(turns)).squaredNorm();
+    double best = without, frames = 0.0;
+    Eigen::Index place = 0;
+    for (Eigen::Index at = 3; at + 4 < count; ++at) {
+        // The two differences around the loss hold its jump, wrapped: they are left out.
+        Eigen::MatrixXd stepped(count, 5);
+        stepped << smooth, Eigen::VectorXd::Zero(count);
+        for (Eigen::Index k = at; k < count; ++k)
+            stepped(k, 4) = unrolled.step_hz[static_cast<std::size_t>(k)];
+        Eigen::VectorXd seen = turns;
+        stepped.middleRows(at - 1, 2).setZero();
+        seen.segment(at - 1, 2).setZero();
+        const Eigen::VectorXd fit = stepped.colPivHouseholderQr().solve(seen);
+        const double left = (seen - stepped * fit).squaredNorm();
+        if (left < best) {
+            best = left;
+            place = at;
+            frames = std::abs(fit(4)) / two_pi * unrolled.rate_hz;
+        }
+    }
+    if (frames < least_frames || std::sqrt(best / without) > residual_ratio) return;
+    report.glitches.push_back(
+        {fmt::format(
+             "the delay steps by about {:.0f} frame(s) within the sweep: frames were lost or repeated",
+             frames),
+         unrolled.frames[static_cast<std::size_t>(place)]});
 }
 
 void check_sweep(std::span<const double> channel, double rate_hz, const signal::Stimulus& stimulus,

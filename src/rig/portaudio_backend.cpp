@@ -236,6 +236,7 @@ Take PortAudioBackend::play_and_record(const TakeRequest& request, const std::at
                               [&] { return job->closed; });
         if (!job->closed) {
             abandoned = true;
+            StderrSilencer::lift();
             worker.detach();
             const std::exception_ptr failure = job->failure;
             lock.unlock();

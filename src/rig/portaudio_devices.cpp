@@ -84,9 +84,10 @@ PaDeviceIndex find_device(const std::string& name, const std::string& host_api, 
     if (found.size() == 1) return found.front();
     const char* role = for_input ? "input" : "output";
     if (found.empty())
-        throw UsageError(fmt::format("no audio {} device is named '{}'{}; there {}: see coldpin devices",
-                                     role, name, host_api.empty() ? "" : " under host API '" + host_api + "'",
-                                     there.empty() ? "is none" : "are " + there));
+        throw CannotMeasure(fmt::format("no audio {} device is named '{}'{}; there {}: see coldpin devices",
+                                        role, name,
+                                        host_api.empty() ? "" : " under host API '" + host_api + "'",
+                                        there.empty() ? "is none" : "are " + there));
     throw UsageError(
         fmt::format("more than one audio {} device is named like '{}': say which by its full name, or set "
                     "host_api (see coldpin devices)",

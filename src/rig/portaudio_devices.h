@@ -22,7 +22,7 @@ class PortAudioLibrary {
 std::string host_api_name(const PaDeviceInfo& info);
 
 // The device named exactly, or the only one whose name holds the words; throws UsageError naming the devices
-// that come near, or all there are.
+// that come near, or all there are (CannotMeasure when none fits).
 PaDeviceIndex find_device(const std::string& name, const std::string& host_api, bool for_input);
 
 }  // namespace coldpin::rig

@@ -12,6 +12,10 @@ class StderrSilencer {
     StderrSilencer(const StderrSilencer&) = delete;
     StderrSilencer& operator=(const StderrSilencer&) = delete;
 
+    // Gives stderr back although a silencer still lives, in a thread that was left behind: the last words of
+    // the program must be heard.
+    static void lift() noexcept;
+
   private:
     int kept_ = -1;
 };

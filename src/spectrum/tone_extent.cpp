@@ -18,6 +18,7 @@ namespace coldpin::spectrum {
 namespace {
 
 constexpr std::size_t most_blocks = 1200;  // the search is quadratic in them
+constexpr std::size_t fewest_blocks = 5;   // a sweep passing the frequency fills one or two, however loud
 
 std::vector<std::complex<double>> block_phasors(std::span<const double> samples, double step,
                                                 std::size_t block) {
@@ -42,6 +43,14 @@ double noise_power(const std::vector<std::complex<double>>& z) {
     return *middle / (2.0 * std::numbers::ln2);
 }
 
+double amplitude_ceiling(const std::vector<std::complex<double>>& z) {
+    std::vector<double> sizes;
+    for (const auto& one : z) sizes.push_back(std::abs(one));
+    std::sort(sizes.begin(), sizes.end());
+    const double median = sizes[sizes.size() / 2], upper_tenth = sizes[sizes.size() * 9 / 10];
+    return std::max(4.0 * median, upper_tenth);
+}
+
 }  // namespace
 
 Extent find_tone(std::span<const double> samples, double rate_hz, double frequency_hz, double guard_s) {
@@ -57,12 +66,18 @@ Extent find_tone(std::span<const double> samples, double rate_hz, double frequen
     const std::size_t block = std::min(static_cast<std::size_t>(std::ceil(shortest)), samples.size() / 2);
     const auto z = block_phasors(samples, 2.0 * std::numbers::pi * frequency_hz / rate_hz, block);
 
+    // A sweep or a click that passes the frequency may be far louder than the tone, for a few blocks: what is
+    // louder than a tenth of all blocks counts no more than that.
+    const double ceiling = amplitude_ceiling(z);
+    std::vector<std::complex<double>> limited = z;
+    for (auto& one : limited)
+        if (std::abs(one) > ceiling) one *= ceiling / std::abs(one);
     std::vector<std::complex<double>> sums(z.size() + 1);
-    for (std::size_t k = 0; k < z.size(); ++k) sums[k + 1] = sums[k] + z[k];
+    for (std::size_t k = 0; k < z.size(); ++k) sums[k + 1] = sums[k] + limited[k];
     double best = -1.0;
     std::size_t first = 0, last = 0;
     for (std::size_t a = 0; a < z.size(); ++a) {
-        for (std::size_t b = a + 1; b <= z.size(); ++b) {
+        for (std::size_t b = a + std::min(fewest_blocks, z.size()); b <= z.size(); ++b) {
             const double score = std::norm(sums[b] - sums[a]) / static_cast<double>(b - a);
             if (score > best) {
                 best = score;

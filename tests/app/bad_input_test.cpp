@@ -1,14 +1,15 @@
 // Everything a user can get wrong: the message names what is wrong, the status says whose fault it is, and
 // nothing half-written stays under a final name.
-#include <gmock/gmock.h>
-#include <gtest/gtest.h>
-
 #include <cmath>
 #include <fstream>
 #include <limits>
 
+#include <gmock/gmock.h>
+#include <gtest/gtest.h>
+
 #include "coldpin/signal/recording.h"
 #include "coldpin/signal/wav.h"
+
 #include "program.h"
 
 namespace coldpin::tests {
@@ -24,9 +25,12 @@ class BadInputTest : public testing::Test {
     TemporaryFolder folder;
 
     std::filesystem::path file(const std::string& name) const { return folder.path() / name; }
-    void write(const std::string& name, const std::string& text) const { std::ofstream(file(name), std::ios::binary) << text; }
+    void write(const std::string& name, const std::string& text) const {
+        std::ofstream(file(name), std::ios::binary) << text;
+    }
 
-    void write_tone(const std::string& name, double level, double length_s = 1.0, double rate_hz = 48000.0, double ceiling = 10.0) const {
+    void write_tone(const std::string& name, double level, double length_s = 1.0, double rate_hz = 48000.0,
+                    double ceiling = 10.0) const {
         signal::Recording recording;
         recording.rate_hz = rate_hz;
         recording.channels.emplace_back();
@@ -43,7 +47,8 @@ class BadInputTest : public testing::Test {
         EXPECT_THAT(outcome.out + outcome.err, Not(HasSubstr("nan")));
         EXPECT_THAT(outcome.out, testing::IsEmpty());
     }
-    Outcome refused(const std::string& arguments, int status, const std::string& says, const std::string& before = "") const {
+    Outcome refused(const std::string& arguments, int status, const std::string& says,
+                    const std::string& before = "") const {
         const Outcome outcome = run_coldpin(arguments, folder.path(), before);
         EXPECT_EQ(outcome.status, status) << arguments << "\n" << outcome.out << outcome.err;
         EXPECT_THAT(outcome.err, HasSubstr(says)) << arguments;
@@ -54,7 +59,9 @@ class BadInputTest : public testing::Test {
 
 const std::string gain_flags = " --frequency 997 --drive-dbu -40 --input-full-scale-dbu 18";
 
-TEST_F(BadInputTest, AMissingFileIsNamed) { refused("analyse noise nowhere.wav", 2, "nowhere.wav"); }
+TEST_F(BadInputTest, AMissingFileIsNamed) {
+    refused("analyse noise nowhere.wav", 2, "nowhere.wav");
+}
 
 TEST_F(BadInputTest, AnEmptyFileIsNamed) {
     write("empty.wav", "");
@@ -107,7 +114,11 @@ TEST_F(BadInputTest, ATooShortRecordingIsRefused) {
 }
 
 TEST_F(BadInputTest, AStimulusOfAnotherRateIsRefused) {
-    ASSERT_EQ(run_coldpin("stimulus sweep --from 20 --to 20000 --seconds 1 --level-dbfs -12 --rate 44100 --out s.wav", folder.path()).status, 0);
+    ASSERT_EQ(run_coldpin(
+                  "stimulus sweep --from 20 --to 20000 --seconds 1 --level-dbfs -12 --rate 44100 --out s.wav",
+                  folder.path())
+                  .status,
+              0);
     write_tone("rec.wav", 0.1);
     const Outcome outcome = refused("analyse response rec.wav --stimulus s.wav", 2, "44100");
     EXPECT_THAT(outcome.err, HasSubstr("48000"));
@@ -164,18 +175,21 @@ TEST_F(BadInputTest, AMissingProfileAndAMissingRigAreNamed) {
 TEST_F(BadInputTest, AnUnwritableFolderIsNamedAndNothingIsLeft) {
     write("runs", "a file where a folder should be");
     refused("check --rig simulated --device " + profiles + "devices/fennmark-pl2.toml", 2, "runs");
-    refused("stimulus tone --frequency 997 --seconds 1 --level-dbfs -20 --out no/such/folder/tone.wav", 2, "no/such/folder");
+    refused("stimulus tone --frequency 997 --seconds 1 --level-dbfs -20 --out no/such/folder/tone.wav", 2,
+            "no/such/folder");
 }
 
 TEST_F(BadInputTest, AFullDiskLeavesNothingUnderAFinalName) {
     // A file size limit stands for a full disk: writing fails half-way.
-    const Outcome outcome = run_coldpin("stimulus tone --frequency 997 --seconds 5 --level-dbfs -20 --out tone.wav", folder.path(),
-                                        "trap '' XFSZ; ulimit -f 100;");
+    const Outcome outcome =
+        run_coldpin("stimulus tone --frequency 997 --seconds 5 --level-dbfs -20 --out tone.wav",
+                    folder.path(), "trap '' XFSZ; ulimit -f 100;");
     EXPECT_EQ(outcome.status, 2) << outcome.err;
     EXPECT_TRUE(std::filesystem::is_empty(folder.path()));
 
-    const Outcome check = run_coldpin("check --rig simulated --device " + profiles + "devices/fennmark-pl2.toml --runs runs", folder.path(),
-                                      "trap '' XFSZ; ulimit -f 100;");
+    const Outcome check =
+        run_coldpin("check --rig simulated --device " + profiles + "devices/fennmark-pl2.toml --runs runs",
+                    folder.path(), "trap '' XFSZ; ulimit -f 100;");
     EXPECT_EQ(check.status, 2) << check.err;
     for (const auto& entry : std::filesystem::recursive_directory_iterator(folder.path()))
         EXPECT_THAT(entry.path().filename().string(), Not(HasSubstr("run.json"))) << entry.path();
@@ -193,17 +207,33 @@ TEST_F(BadInputTest, UnknownWordsAndMissingOnesAreUsageErrors) {
     EXPECT_EQ(run_coldpin("chek", folder.path()).status, 2);
     EXPECT_EQ(run_coldpin("check --rig simulated", folder.path()).status, 2);
     EXPECT_EQ(run_coldpin("check --rig simulated --devcie x", folder.path()).status, 2);
-    EXPECT_EQ(run_coldpin("stimulus tone --frequency lots --seconds 1 --level-dbfs -20 --out t.wav", folder.path()).status, 2);
-    EXPECT_EQ(run_coldpin("stimulus tone --frequency 30000 --seconds 1 --level-dbfs -20 --out t.wav", folder.path()).status, 2);
-    EXPECT_EQ(run_coldpin("stimulus tone --frequency 997 --seconds 1 --level-dbfs 3 --out t.wav", folder.path()).status, 2);
-    EXPECT_EQ(run_coldpin("stimulus tone --frequency nan --seconds 1 --level-dbfs -3 --out t.wav", folder.path()).status, 2);
-    EXPECT_EQ(run_coldpin("stimulus tone --frequency 997 --seconds 1e9 --level-dbfs -3 --out t.wav", folder.path()).status, 2);
+    EXPECT_EQ(
+        run_coldpin("stimulus tone --frequency lots --seconds 1 --level-dbfs -20 --out t.wav", folder.path())
+            .status,
+        2);
+    EXPECT_EQ(
+        run_coldpin("stimulus tone --frequency 30000 --seconds 1 --level-dbfs -20 --out t.wav", folder.path())
+            .status,
+        2);
+    EXPECT_EQ(
+        run_coldpin("stimulus tone --frequency 997 --seconds 1 --level-dbfs 3 --out t.wav", folder.path())
+            .status,
+        2);
+    EXPECT_EQ(
+        run_coldpin("stimulus tone --frequency nan --seconds 1 --level-dbfs -3 --out t.wav", folder.path())
+            .status,
+        2);
+    EXPECT_EQ(
+        run_coldpin("stimulus tone --frequency 997 --seconds 1e9 --level-dbfs -3 --out t.wav", folder.path())
+            .status,
+        2);
     EXPECT_TRUE(std::filesystem::is_empty(folder.path()));
 }
 
 TEST_F(BadInputTest, CtrlCInTheMiddleEndsSoonAndKeepsNothing) {
-    const Outcome outcome = run_coldpin("check --rig simulated --real-time --device " + profiles + "devices/fennmark-pl2.toml", folder.path(),
-                                        "timeout -s INT 1.5");
+    const Outcome outcome =
+        run_coldpin("check --rig simulated --real-time --device " + profiles + "devices/fennmark-pl2.toml",
+                    folder.path(), "timeout -s INT 1.5");
     EXPECT_LT(outcome.wall_s, 4.0);
     EXPECT_FALSE(std::filesystem::exists(file("runs")) && !std::filesystem::is_empty(file("runs")));
     EXPECT_THAT(outcome.err, HasSubstr("interrupted"));

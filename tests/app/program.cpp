@@ -1,13 +1,13 @@
 #include "program.h"
 
-#include <stdlib.h>
-#include <sys/wait.h>
-
 #include <chrono>
 #include <cstdlib>
 #include <fstream>
 #include <sstream>
 #include <stdexcept>
+
+#include <stdlib.h>
+#include <sys/wait.h>
 
 namespace coldpin::tests {
 
@@ -22,11 +22,13 @@ std::string text_of(const std::filesystem::path& file) {
 
 }  // namespace
 
-Outcome run_coldpin(const std::string& arguments, const std::filesystem::path& folder, const std::string& before) {
+Outcome run_coldpin(const std::string& arguments, const std::filesystem::path& folder,
+                    const std::string& before) {
     TemporaryFolder said;
-    const std::string command = "cd '" + folder.string() + "' && { " + before + " timeout -s KILL 60 '" COLDPIN_PROGRAM "' " +
-                                arguments + "; } >'" + (said.path() / "out").string() + "' 2>'" +
-                                (said.path() / "err").string() + "' </dev/null";
+    const std::string command = "cd '" + folder.string() + "' && { " + before +
+                                " timeout -s KILL 60 '" COLDPIN_PROGRAM "' " + arguments + "; } >'" +
+                                (said.path() / "out").string() + "' 2>'" + (said.path() / "err").string() +
+                                "' </dev/null";
     const auto begin = std::chrono::steady_clock::now();
     const int raw = std::system(command.c_str());
     Outcome outcome;

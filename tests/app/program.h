@@ -16,7 +16,8 @@ struct Outcome {
 
 // Arguments as a shell would take them (quote them yourself); runs in `folder`. `before` goes in front of the
 // program's name, such as "ulimit -f 4;". The program is killed after 60 s (status 137).
-Outcome run_coldpin(const std::string& arguments, const std::filesystem::path& folder, const std::string& before = "");
+Outcome run_coldpin(const std::string& arguments, const std::filesystem::path& folder,
+                    const std::string& before = "");
 
 // A fresh folder that goes with the test.
 class TemporaryFolder {

@@ -28,15 +28,18 @@ inline void add(std::vector<double>& to, const std::vector<double>& what) {
     for (std::size_t n = 0; n < std::min(to.size(), what.size()); ++n) to[n] += what[n];
 }
 
-inline std::vector<double> sine(std::size_t frames, double rate_hz, double frequency_hz, double peak, double phase = 0.0) {
+inline std::vector<double> sine(std::size_t frames, double rate_hz, double frequency_hz, double peak,
+                                double phase = 0.0) {
     std::vector<double> samples(frames);
     for (std::size_t n = 0; n < frames; ++n)
-        samples[n] = peak * std::cos(two_pi * std::fmod(frequency_hz * static_cast<double>(n) / rate_hz, 1.0) + phase);
+        samples[n] =
+            peak * std::cos(two_pi * std::fmod(frequency_hz * static_cast<double>(n) / rate_hz, 1.0) + phase);
     return samples;
 }
 
 // Hum whose frequency runs linearly from mean - drift/2 to mean + drift/2; peaks[h - 1] for harmonic h.
-inline std::vector<double> hum(std::size_t frames, double rate_hz, double mean_hz, double drift_hz, const std::vector<double>& peaks) {
+inline std::vector<double> hum(std::size_t frames, double rate_hz, double mean_hz, double drift_hz,
+                               const std::vector<double>& peaks) {
     std::vector<double> samples(frames, 0.0);
     const double length_s = static_cast<double>(frames) / rate_hz;
     for (std::size_t n = 0; n < frames; ++n) {
@@ -70,13 +73,16 @@ struct Device {
 };
 
 // What `device` makes of `sent`, recorded for `frames`.
-inline std::vector<double> through(std::vector<double> sent, const Device& device, double rate_hz, std::size_t frames) {
+inline std::vector<double> through(std::vector<double> sent, const Device& device, double rate_hz,
+                                   std::size_t frames) {
     for (double& x : sent) x = x + device.second * x * x + device.third * x * x * x;
-    const std::size_t size = spectrum::fast_fft_size(std::max(frames, sent.size()) + static_cast<std::size_t>(4.0 * rate_hz));
+    const std::size_t size =
+        spectrum::fast_fft_size(std::max(frames, sent.size()) + static_cast<std::size_t>(4.0 * rate_hz));
     auto bins = spectrum::forward_fft(sent, size);
     for (std::size_t k = 0; k < bins.size(); ++k) {
         const double f = static_cast<double>(k) * rate_hz / static_cast<double>(size);
-        bins[k] *= device.response(f) * std::polar(1.0, -two_pi * std::fmod(f / rate_hz * device.delay_frames, 1.0));
+        bins[k] *=
+            device.response(f) * std::polar(1.0, -two_pi * std::fmod(f / rate_hz * device.delay_frames, 1.0));
     }
     auto out = spectrum::inverse_fft(bins, size);
     out.resize(frames);

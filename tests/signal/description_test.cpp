@@ -20,8 +20,9 @@ std::string refusal(const std::string& text) {
 }
 
 TEST(DescriptionTest, EveryMemberComesBackBitForBit) {
-    for (const StimulusKind& kind : {StimulusKind(Tone{997.0000000001}), StimulusKind(Multitone{{1.0 / 3.0 * 300.0, 9973.0}}), StimulusKind(Sweep{8.0, 22000.0}),
-                                     StimulusKind(Silence{}), StimulusKind(Burst{5000.0, 25})}) {
+    for (const StimulusKind& kind :
+         {StimulusKind(Tone{997.0000000001}), StimulusKind(Multitone{{1.0 / 3.0 * 300.0, 9973.0}}),
+          StimulusKind(Sweep{8.0, 22000.0}), StimulusKind(Silence{}), StimulusKind(Burst{5000.0, 25})}) {
         Description description;
         Stimulus stimulus;
         stimulus.kind = kind;
@@ -49,7 +50,8 @@ TEST(DescriptionTest, EveryMemberComesBackBitForBit) {
 }
 
 TEST(DescriptionTest, WhatANewerVersionAddedIsPassedOver) {
-    EXPECT_EQ(description_from_json_text(R"({"schema": "coldpin-recording/1", "moon": "full"})", "x"), Description{});
+    EXPECT_EQ(description_from_json_text(R"({"schema": "coldpin-recording/1", "moon": "full"})", "x"),
+              Description{});
 }
 
 TEST(DescriptionTest, DamageIsNamedByFileAndMember) {
@@ -58,13 +60,20 @@ TEST(DescriptionTest, DamageIsNamedByFileAndMember) {
     EXPECT_THAT(refusal("{}"), HasSubstr("schema"));
     EXPECT_THAT(refusal(R"({"schema": "other/1"})"), HasSubstr("other/1"));
     EXPECT_THAT(refusal(R"({"schema": "coldpin-recording/1", "drive_dbu": "loud"})"), HasSubstr("drive_dbu"));
-    EXPECT_THAT(refusal(R"({"schema": "coldpin-recording/1", "stimulus": {"kind": "chirp"}})"), HasSubstr("chirp"));
-    EXPECT_THAT(refusal(R"({"schema": "coldpin-recording/1", "stimulus": {"kind": "tone", "frequency_hz": 997}})"), HasSubstr("length_s"));
-    EXPECT_THAT(refusal(R"({"schema": "coldpin-recording/1", "stimulus": {"kind": "tone", "frequency_hz": 99700, "length_s": 1, "level_dbfs": 0, "rate_hz": 48000, "fade_s": 0}})"),
-                HasSubstr("99700"));
+    EXPECT_THAT(refusal(R"({"schema": "coldpin-recording/1", "stimulus": {"kind": "chirp"}})"),
+                HasSubstr("chirp"));
+    EXPECT_THAT(
+        refusal(R"({"schema": "coldpin-recording/1", "stimulus": {"kind": "tone", "frequency_hz": 997}})"),
+        HasSubstr("length_s"));
+    EXPECT_THAT(
+        refusal(
+            R"({"schema": "coldpin-recording/1", "stimulus": {"kind": "tone", "frequency_hz": 99700, "length_s": 1, "level_dbfs": 0, "rate_hz": 48000, "fade_s": 0}})"),
+        HasSubstr("99700"));
 }
 
-TEST(DescriptionTest, LiesBesideItsRecording) { EXPECT_EQ(description_path("a/b.take.wav"), std::filesystem::path("a/b.take.json")); }
+TEST(DescriptionTest, LiesBesideItsRecording) {
+    EXPECT_EQ(description_path("a/b.take.wav"), std::filesystem::path("a/b.take.json"));
+}
 
 }  // namespace
 }  // namespace coldpin::signal

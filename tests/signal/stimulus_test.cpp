@@ -1,14 +1,15 @@
 #include "coldpin/signal/stimulus.h"
 
-#include <gmock/gmock.h>
-#include <gtest/gtest.h>
-
 #include <cmath>
 #include <limits>
+
+#include <gmock/gmock.h>
+#include <gtest/gtest.h>
 
 #include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/units/error.h"
 #include "coldpin/units/level.h"
+
 #include "kit/signals.h"
 
 namespace coldpin::signal {
@@ -48,7 +49,9 @@ TEST(StimulusTest, AToneIsTheSineOfTheFormulaToTheLastDigits) {
     const auto samples = render(make(Tone{997.0}, 3.0));
     const double peak = units::sine_peak_from_dbfs(-12.0);
     for (std::size_t n = 1000; n + 1000 < samples.size(); n += 7)
-        EXPECT_NEAR(samples[n], peak * std::sin(two_pi * std::fmod(997.0 * static_cast<double>(n) / 48000.0, 1.0)), 1e-12);
+        EXPECT_NEAR(samples[n],
+                    peak * std::sin(two_pi * std::fmod(997.0 * static_cast<double>(n) / 48000.0, 1.0)),
+                    1e-12);
 }
 
 TEST(StimulusTest, FadesAreRaisedCosines) {
@@ -65,7 +68,8 @@ TEST(StimulusTest, FadesAreRaisedCosines) {
 }
 
 TEST(StimulusTest, AMultitonesRmsIsItsLevel) {
-    auto stimulus = make(Multitone{{100.0, 1000.0, 2500.0, 10000.0}}, 1.0, -20.0);  // whole periods in a second
+    auto stimulus =
+        make(Multitone{{100.0, 1000.0, 2500.0, 10000.0}}, 1.0, -20.0);  // whole periods in a second
     stimulus.fade_s = 0.0;
     EXPECT_NEAR(units::dbfs_from_sample_rms(tests::rms(render(stimulus))), -20.0, 1e-9);
 }
@@ -96,11 +100,17 @@ TEST(StimulusTest, ASweepsHarmonicIsTheSweepItselfEarlier) {
     const Sweep sweep{20.0, 20000.0};
     const double constant_s = sweep_time_constant_s(sweep, 5.0);
     EXPECT_NEAR(constant_s, 5.0 / std::log(1000.0), 1e-12);
-    const auto phase = [&](double t) { return two_pi * sweep.from_hz * constant_s * std::exp(t / constant_s); };
-    for (double t : {0.1, 1.0, 3.0}) EXPECT_NEAR(2.0 * phase(t), phase(t + constant_s * std::log(2.0)), 1e-6 * phase(t));
+    const auto phase = [&](double t) {
+        return two_pi * sweep.from_hz * constant_s * std::exp(t / constant_s);
+    };
+    for (double t : {0.1, 1.0, 3.0})
+        EXPECT_NEAR(2.0 * phase(t), phase(t + constant_s * std::log(2.0)), 1e-6 * phase(t));
     const auto samples = render(make(sweep, 5.0));
     for (std::size_t n = 5000; n < 230000; n += 9973)
-        EXPECT_NEAR(samples[n], units::sine_peak_from_dbfs(-12.0) * std::sin(std::fmod(phase(static_cast<double>(n) / 48000.0), two_pi)), 1e-9);
+        EXPECT_NEAR(samples[n],
+                    units::sine_peak_from_dbfs(-12.0) *
+                        std::sin(std::fmod(phase(static_cast<double>(n) / 48000.0), two_pi)),
+                    1e-9);
 }
 
 TEST(StimulusTest, ASweepRunsFromItsFirstToItsLastFrequency) {
@@ -112,7 +122,8 @@ TEST(StimulusTest, ASweepRunsFromItsFirstToItsLastFrequency) {
         for (std::size_t n = begin + 1; n < end; ++n) count += (samples[n - 1] < 0.0) != (samples[n] < 0.0);
         return count;
     };
-    // In the last 10 ms the frequency rises from 9772 to 10000 Hz: 98.9 periods, two crossings each, one either way.
+    // In the last 10 ms the frequency rises from 9772 to 10000 Hz: 98.9 periods, two crossings each, one
+    // either way.
     EXPECT_NEAR(crossings(samples.size() - 480, samples.size()), 2.0 * 98.9, 2.0);
     EXPECT_NEAR(crossings(0, 4800), 2.0 * 11.2, 2.0);  // first 100 ms: 100 to 126 Hz
 }

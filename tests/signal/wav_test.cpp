@@ -1,12 +1,12 @@
 #include "coldpin/signal/wav.h"
 
-#include <gmock/gmock.h>
-#include <gtest/gtest.h>
-
 #include <cmath>
 #include <fstream>
 #include <limits>
 #include <random>
+
+#include <gmock/gmock.h>
+#include <gtest/gtest.h>
 
 #include "coldpin/signal/text_file.h"
 #include "coldpin/units/error.h"
@@ -20,8 +20,9 @@ using testing::HasSubstr;
 class WavTest : public testing::Test {
   protected:
     void SetUp() override {
-        folder = fs::temp_directory_path() / ("coldpin-wav-" + std::to_string(::testing::UnitTest::GetInstance()->random_seed()) + "-" +
-                                              ::testing::UnitTest::GetInstance()->current_test_info()->name());
+        folder = fs::temp_directory_path() /
+                 ("coldpin-wav-" + std::to_string(::testing::UnitTest::GetInstance()->random_seed()) + "-" +
+                  ::testing::UnitTest::GetInstance()->current_test_info()->name());
         fs::remove_all(folder);
         fs::create_directories(folder);
     }
@@ -65,9 +66,12 @@ TEST_F(WavTest, TheSameSamplesGiveTheSameFile) {
 
 TEST_F(WavTest, SixteenBitSamplesAreScaledToFullScaleOne) {
     // By hand: one channel, 8 kHz, samples 32767, -32768, 16384, 0.
-    const unsigned char bytes[] = {'R', 'I', 'F', 'F', 44, 0, 0, 0, 'W', 'A', 'V', 'E', 'f', 'm', 't', ' ', 16, 0, 0, 0, 1, 0, 1, 0, 0x40, 0x1f, 0, 0, 0x80, 0x3e,
-                                   0,   0,   2,   0,   16, 0, 'd', 'a', 't', 'a', 8, 0, 0, 0, 0xff, 0x7f, 0x00, 0x80, 0x00, 0x40, 0, 0};
-    std::ofstream(folder / "pcm.wav", std::ios::binary).write(reinterpret_cast<const char*>(bytes), sizeof bytes);
+    const unsigned char bytes[] = {'R', 'I', 'F',  'F',  44, 0,    0,    0,    'W',  'A',  'V',  'E',  'f',
+                                   'm', 't', ' ',  16,   0,  0,    0,    1,    0,    1,    0,    0x40, 0x1f,
+                                   0,   0,   0x80, 0x3e, 0,  0,    2,    0,    16,   0,    'd',  'a',  't',
+                                   'a', 8,   0,    0,    0,  0xff, 0x7f, 0x00, 0x80, 0x00, 0x40, 0,    0};
+    std::ofstream(folder / "pcm.wav", std::ios::binary)
+        .write(reinterpret_cast<const char*>(bytes), sizeof bytes);
     const Recording read = read_wav(folder / "pcm.wav");
     ASSERT_EQ(read.frames(), 4U);
     EXPECT_DOUBLE_EQ(read.channels[0][0], 32767.0 / 32768.0);
@@ -102,7 +106,8 @@ TEST_F(WavTest, ANumberThatIsNoneIsRefusedBothWays) {
 }
 
 TEST_F(WavTest, NothingIsLeftWhereWritingFails) {
-    EXPECT_THAT(refusal([&] { write_wav(folder / "no" / "a.wav", noise(1, 10)); }), HasSubstr("does not exist"));
+    EXPECT_THAT(refusal([&] { write_wav(folder / "no" / "a.wav", noise(1, 10)); }),
+                HasSubstr("does not exist"));
     EXPECT_THAT(refusal([&] { write_text_file(folder / "no" / "a.txt", "x"); }), HasSubstr("does not exist"));
     EXPECT_TRUE(fs::is_empty(folder));
 }
@@ -110,7 +115,8 @@ TEST_F(WavTest, NothingIsLeftWhereWritingFails) {
 TEST_F(WavTest, AChannelThatDoesNotExistIsRefused) {
     const Recording recording = noise(2, 10);
     EXPECT_EQ(recording.channel(2).size(), 10U);
-    EXPECT_THAT(refusal([&] { recording.channel(3, "a.wav"); }), testing::AllOf(HasSubstr("a.wav"), HasSubstr("3"), HasSubstr("2")));
+    EXPECT_THAT(refusal([&] { recording.channel(3, "a.wav"); }),
+                testing::AllOf(HasSubstr("a.wav"), HasSubstr("3"), HasSubstr("2")));
     EXPECT_NE(refusal([&] { recording.channel(0); }), "");
 }
 

@@ -1,8 +1,8 @@
 #include "coldpin/units/frequency_grid.h"
 
-#include <gtest/gtest.h>
-
 #include <cmath>
+
+#include <gtest/gtest.h>
 
 #include "coldpin/units/error.h"
 
@@ -14,7 +14,8 @@ TEST(FrequencyGridTest, HoldsBothEndsExactlyAndEvenSteps) {
     EXPECT_DOUBLE_EQ(grid.front(), 20.0);
     EXPECT_DOUBLE_EQ(grid.back(), 20000.0);
     EXPECT_EQ(grid.size(), 31U);
-    for (std::size_t i = 1; i < grid.size(); ++i) EXPECT_NEAR(grid[i] / grid[i - 1], std::pow(1000.0, 1.0 / 30.0), 1e-12);
+    for (std::size_t i = 1; i < grid.size(); ++i)
+        EXPECT_NEAR(grid[i] / grid[i - 1], std::pow(1000.0, 1.0 / 30.0), 1e-12);
 }
 
 TEST(FrequencyGridTest, RefusesWhatIsNoSpan) {

@@ -53,7 +53,7 @@ class Backend {
     virtual std::string description() const = 0;  // for reports: host API, device, rate
 };
 
-// Throws UsageError for an unknown device (naming the nearest ones) or unfit channels or rate, CannotMeasure
+// Throws CannotMeasure for a device that is not there (naming those that are), UsageError for unfit channels or rate; CannotMeasure
 // when the audio system does not answer.
 std::unique_ptr<Backend> open_backend(const Setup& setup);
 
