@@ -104,6 +104,14 @@ std::optional<double> interpolated(const std::vector<profile::MaskPoint>& mask, 
     return std::nullopt;
 }
 
+// Frequencies at which a curve is only a lower bound.
+bool is_lower_bound(const Curve& curve, double hz) {
+    const auto* listed = curve.conditions.find("at_least_at_hz");
+    const auto* frequencies = listed != nullptr ? std::get_if<std::vector<double>>(listed) : nullptr;
+    return frequencies != nullptr &&
+           std::find(frequencies->begin(), frequencies->end(), hz) != frequencies->end();
+}
+
 void judge_curve(Judgement& judgement, const Curve& curve) {
     bool failed = false, open = false;
     double worst_y = 0.0;
@@ -113,6 +121,7 @@ void judge_curve(Judgement& judgement, const Curve& curve) {
         if (!min && !max) continue;
         Figure point;
         point.value = curve.y[k];
+        if (is_lower_bound(curve, curve.x[k])) point.bound = Bound::at_least;
         point.uncertainty = k < curve.uncertainty.size() ? curve.uncertainty[k] : 0.0;
         const Verdict verdict = decide(point, min, max);
         failed = failed || verdict == Verdict::fail;

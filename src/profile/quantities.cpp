@@ -1,7 +1,8 @@
 #include "coldpin/profile/quantities.h"
 
 #include <algorithm>
-#include <numeric>
+
+#include "edit_distance.h"
 
 namespace coldpin::profile {
 
@@ -17,6 +18,8 @@ const std::vector<Quantity>& quantities() {
         {"group_delay", "response", "group delay", {"s"}, {}, true},
         {"harmonic_2", "response", "second harmonic", {"dB"}, {}, true},
         {"harmonic_3", "response", "third harmonic", {"dB"}, {}, true},
+        {"harmonic_4", "response", "fourth harmonic", {"dB"}, {}, true},
+        {"harmonic_5", "response", "fifth harmonic", {"dB"}, {}, true},
         {"noise_output",
          "noise",
          "noise at the output",
@@ -54,32 +57,15 @@ const std::vector<std::string_view>& measure_kinds() {
     return kinds;
 }
 
-namespace {
-
-// Levenshtein distance, one row at a time.
-std::size_t edit_distance(std::string_view a, std::string_view b) {
-    std::vector<std::size_t> row(b.size() + 1);
-    std::iota(row.begin(), row.end(), std::size_t{0});
-    for (std::size_t i = 1; i <= a.size(); ++i) {
-        std::size_t diagonal = row[0];
-        row[0] = i;
-        for (std::size_t j = 1; j <= b.size(); ++j) {
-            const std::size_t above = row[j];
-            row[j] = std::min({above + 1, row[j - 1] + 1, diagonal + (a[i - 1] == b[j - 1] ? 0U : 1U)});
-            diagonal = above;
-        }
-    }
-    return row[b.size()];
-}
-
-}  // namespace
-
 std::string nearest_word(std::string_view word, const std::vector<std::string_view>& candidates) {
+    constexpr std::size_t longest = 200;  // no key is longer; a mistyped page of text must not cost seconds
+    word = word.substr(0, longest);
     std::string_view best;
-    std::size_t least = std::max<std::size_t>(1, word.size() / 2) + 1;
+    std::size_t least = word.size() / 2 + 1;
     for (std::string_view candidate : candidates) {
-        const std::size_t distance = edit_distance(word.substr(0, 200), candidate);
-        if (distance < least && !candidate.empty()) {
+        if (candidate.empty()) continue;
+        const std::size_t distance = edit_distance(word, candidate.substr(0, longest));
+        if (distance < least) {
             least = distance;
             best = candidate;
         }

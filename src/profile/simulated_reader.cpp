@@ -14,9 +14,11 @@ rig::SimulatedPreamp read_simulated_preamp(TableReader& table) {
     rig::SimulatedPreamp preamp;
     if (auto name = table.text("name")) preamp.name = *name;
     if (table.has("gain_db")) preamp.gain_db_by_setting.clear();
-    table.entries("gain_db", [&](const std::string& setting, double gain_db) {
+    table.entries("gain_db", {-60.0, 120.0}, [&](const std::string& setting, double gain_db) {
         preamp.gain_db_by_setting[setting] = gain_db;
     });
+    if (preamp.gain_db_by_setting.empty())
+        table.fail("gain_db", "no gain", "one for each setting, such as { \"40 dB\" = 40.0 }");
     take(table, "lower_corner_hz", preamp.lower_corner_hz, {0.01, 1000.0});
     take(table, "upper_corner_hz", preamp.upper_corner_hz, {1000.0, 1e7});
     take(table, "input_noise_nv", preamp.input_noise_nv, {0.0, 1e6});
@@ -30,7 +32,7 @@ rig::SimulatedPreamp read_simulated_preamp(TableReader& table) {
     take(table, "second_harmonic_db", preamp.second_harmonic_db, {-200.0, 0.0});
     take(table, "third_harmonic_db", preamp.third_harmonic_db, {-200.0, 0.0});
     if (const auto polarity = table.whole("polarity", -1, 1)) {
-        if (*polarity == 0) table.fail("polarity", "found 0, expected 1 or -1");
+        if (*polarity == 0) table.fail("polarity", "0", "1 (upright) or -1 (inverted)");
         preamp.polarity = *polarity;
     }
     take(table, "second_channel_gain_offset_db", preamp.second_channel_gain_offset_db, {-20.0, 20.0});

@@ -208,8 +208,8 @@ Lag lag_of(std::span<const double> channel, const std::vector<double>& sent) {
 // A part of the sweep, in blocks: for each the delay of that moment (frames) and the size of what was heard.
 struct Unrolled {
     double rate_hz = 0.0;
-    std::vector<double> hz, step_hz,
-        turns_rad;  // the later block's frequency, the step to it, the phase's turn
+    // Of each pair of neighbouring blocks: the later one's frequency, the step to it, the turn of the phase.
+    std::vector<double> hz, step_hz, turns_rad;
     std::vector<double> delays, log_sizes;
     std::vector<std::size_t> frames;
 };
@@ -243,8 +243,11 @@ Unrolled unroll(std::span<const double> channel, double rate_hz, const signal::S
                    std::polar(1.0, -two_pi * std::fmod(turns, 1.0));
         }
         if (previous_hz > 0.0) {
-            unrolled.delays.push_back(-std::arg(sum * std::conj(previous)) / two_pi / (hz - previous_hz) *
-                                      rate_hz);
+            const double turn_rad = std::arg(sum * std::conj(previous)), step_hz = hz - previous_hz;
+            unrolled.hz.push_back(hz);
+            unrolled.step_hz.push_back(step_hz);
+            unrolled.turns_rad.push_back(turn_rad);
+            unrolled.delays.push_back(-turn_rad / two_pi / step_hz * rate_hz);
             unrolled.log_sizes.push_back(std::log(std::max(std::abs(sum), 1e-30)));
             unrolled.frames.push_back(static_cast<std::size_t>(start));
         }
@@ -290,7 +293,7 @@ double check_unrolled(const Unrolled& unrolled, ContentReport& report) {
 // function of frequency: constant, 1/f^2, 1/f^4 and 1/f^6 hold any ordinary high-pass. A loss adds a constant
 // from some block on. For each place the least-squares fit with that step is compared with the one without.
 void check_low_end(const Unrolled& unrolled, ContentReport& report) {
-    constexpr double least_frames = 1.0;
+    constexpr double least_frames = 3.0;
     constexpr double residual_ratio = 0.35;  // what a mere misfit of the smooth part never reaches
     const auto count = static_cast<Eigen::Index>(unrolled.turns_rad.size());
     if (count < 14) return;
@@ -307,7 +310,7 @@ void check_low_end(const Unrolled& unrolled, ContentReport& report) {
     const double without = (turns - smooth * smooth.colPivHouseholderQr().solve(turns)).squaredNorm();
     double best = without, frames = 0.0;
     Eigen::Index place = 0;
-    for (Eigen::Index at = 3; at + 4 < count; ++at) {
+    for (Eigen::Index at = 6; at + 6 < count; ++at) {
         // The two differences around the loss hold its jump, wrapped: they are left out.
         Eigen::MatrixXd stepped(count, 5);
         stepped << smooth, Eigen::VectorXd::Zero(count);
@@ -343,7 +346,7 @@ void check_sweep(std::span<const double> channel, double rate_hz, const signal::
     const double tightest =
         check_unrolled(unroll(channel, rate_hz, stimulus, lag.frames, block, 1000.0, rate_hz), report);
     if (report.whole())
-        check_low_end(unroll(channel, rate_hz, stimulus, lag.frames, 5 * block, 80.0, 1300.0), report);
+        check_low_end(unroll(channel, rate_hz, stimulus, lag.frames, 5 * block, 45.0, 1300.0), report);
     report.proven = report.whole() && tightest * sure < 3.5;
 }
 

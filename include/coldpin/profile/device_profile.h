@@ -31,7 +31,7 @@ struct Requirement {
     measure::Conditions conditions;  // weighting, frequency_hz, harmonic ... that the figure must have
     std::optional<double> min;
     std::optional<double> max;
-    std::vector<MaskPoint> mask;  // for curves
+    std::vector<MaskPoint> mask;  // for curves; rising in frequency, each limit at two points or more
     std::string unit;
     std::string why;  // one sentence for the sheet
     int line = 0;     // in the profile
@@ -45,7 +45,7 @@ struct PlanStep {
     std::vector<double> frequencies_hz;           // absent: 997 (gain); 85, 997, 9973 (cmrr)
     std::optional<double> from_hz;                // sweeps; absent: 10 Hz (or the band) to 0.46 of the rate
     std::optional<double> to_hz;
-    std::optional<double> length_s;
+    std::optional<double> length_s;  // 0.05 to 120 s
     measure::Band band;
     std::optional<double> mains_hz;
     std::string stimulus;  // cmrr: "tones" (default) or "sweep"
@@ -70,9 +70,12 @@ struct DeviceProfile {
     const GainSetting* find_setting(const std::string& setting) const;
 };
 
-// Throws UsageError "file:line:column: found X, expected Y" for syntax, types, unknown keys (with the nearest
-// known one), min above max, unknown quantities, settings that are not declared, requirements that no plan
-// step measures, an empty plan, numbers out of range.
+// Throw UsageError "file:line:column: in [table] key: found X, expected Y; did you mean 'Z'?" for syntax,
+// types, unknown keys (with the nearest known one), another schema, min above max, unknown quantities, units
+// and conditions, settings that are not declared or declared twice, an empty plan, numbers out of range or
+// not finite. And for what would quietly not be done: requirements that no plan step measures, frequencies
+// that no step plays, a mask beyond the sweep, a requirement that leaves open which of several tones it
+// means, keys that a step of its kind ignores, a pretended unit whose gains do not fit the settings.
 DeviceProfile read_device_profile(const std::filesystem::path& file);
 DeviceProfile device_profile_from_text(const std::string& text, const std::string& source_name);
 

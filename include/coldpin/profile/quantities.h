@@ -22,8 +22,8 @@ const std::vector<Quantity>& quantities();
 const Quantity* find_quantity(std::string_view name);  // nullptr when unknown
 const std::vector<std::string_view>& measure_kinds();  // gain, response, noise, hum, cmrr, polarity, latency
 
-// The candidate with the smallest edit distance to `word`, empty when none is near (more than half the word
-// would have to change).
+// The candidate with the smallest edit distance to `word`, the first of equals; upper and lower case count as
+// the same. Empty when none is near (more than half the word would have to change).
 std::string nearest_word(std::string_view word, const std::vector<std::string_view>& candidates);
 
 }  // namespace coldpin::profile
