@@ -22,6 +22,8 @@ template <class... Handlers>
 struct Overloaded : Handlers... {
     using Handlers::operator()...;
 };
+template <class... Handlers>
+Overloaded(Handlers...) -> Overloaded<Handlers...>;  // clang 14 does not deduce it by itself
 
 void require_finite(double value, const char* what) {
     if (!std::isfinite(value)) throw UsageError(fmt::format("stimulus: {} must be a number", what));

@@ -52,24 +52,26 @@ Run run_on(profile::RigFile rig, const profile::DeviceProfile& device, QuietBenc
 TEST(PerformTest, AHealthyUnitPassesWithTheTruthInsideEveryUncertainty) {
     const auto device = profile::read_device_profile(profiles + "devices/fennmark-pl2.toml");
     QuietBench bench;
-    const Run run = run_on(profile::read_rig("simulated"), device, bench);
+    const check::Run run = run_on(profile::read_rig("simulated"), device, bench);
     EXPECT_EQ(run.verdict, Verdict::pass);
     EXPECT_TRUE(bench.asked.empty());
     EXPECT_LT(run.wall_time_s, 3.0);
     for (const auto& step : run.steps) {
         EXPECT_EQ(step.failure, "");
-        if (const auto* gain = step.findings.figure("gain"))
+        if (const auto* gain = step.findings.figure("gain")) {
             EXPECT_NEAR(gain->value, device.simulated->gain_db_by_setting.begin()->second, gain->uncertainty);
-        if (const auto* rejection = step.findings.figure("common_mode_rejection", {{"frequency_hz", 85.0}}))
+        }
+        if (const auto* rejection = step.findings.figure("common_mode_rejection", {{"frequency_hz", 85.0}})) {
             EXPECT_NEAR(rejection->value, device.simulated->rejection_db, rejection->uncertainty + 0.01);
+        }
     }
 }
 
 TEST(PerformTest, AnalysingAgainGivesTheSameFindingsAndVerdicts) {
     const auto device = profile::read_device_profile(profiles + "devices/saltmarsh-s4.toml");
     QuietBench bench;
-    Run run = run_on(profile::read_rig("simulated"), device, bench);
-    const Run before = run;
+    check::Run run = run_on(profile::read_rig("simulated"), device, bench);
+    const check::Run before = run;
     analyse_again(run);
     ASSERT_EQ(run.steps.size(), before.steps.size());
     for (std::size_t i = 0; i < run.steps.size(); ++i)
@@ -161,15 +163,18 @@ TEST(PerformTest, ALimitIsHeldBeforeAnythingIsPlayed) {
 TEST(PerformTest, AnOpenColdLegIsSeenInGainAndRejection) {
     const auto device = profile::read_device_profile(profiles + "devices/fennmark-pl2.toml");
     QuietBench bench;
-    const Run run = run_on(profile::read_rig(profiles + "rigs/simulated-cold-leg-open.toml"), device, bench);
+    const check::Run run =
+        run_on(profile::read_rig(profiles + "rigs/simulated-cold-leg-open.toml"), device, bench);
     EXPECT_EQ(run.verdict, Verdict::fail);
     EXPECT_FALSE(run.cautions.empty());  // the common-mode drive was lowered
     for (const auto& step : run.steps) {
-        if (const auto* gain = step.findings.figure("gain"))
+        if (const auto* gain = step.findings.figure("gain")) {
             EXPECT_NEAR(gain->value, device.simulated->gain_db_by_setting.begin()->second - 6.02, 0.1);
+        }
         // Half the drive arrives differentially, all of the common mode does: 0.5.
-        if (const auto* rejection = step.findings.figure("common_mode_rejection"))
+        if (const auto* rejection = step.findings.figure("common_mode_rejection")) {
             EXPECT_NEAR(rejection->value, -6.02, 0.2);
+        }
     }
 }
 
@@ -178,16 +183,17 @@ TEST(PerformTest, ANoisyInterfaceLeavesNoiseUndecidedRatherThanFailed) {
     QuietBench bench;
     auto rig = profile::read_rig(profiles + "rigs/simulated-noisy-interface.toml");
     rig.setup.simulated.interface.input_noise_dbfs = -70.0;
-    const Run run = run_on(rig, device, bench);
+    const check::Run run = run_on(rig, device, bench);
     for (const auto& judgement : run.judgements)
-        if (judgement.requirement.quantity == "noise_input_referred")
+        if (judgement.requirement.quantity == "noise_input_referred") {
             EXPECT_EQ(judgement.verdict, Verdict::undecided) << judgement.sentence;
+        }
 }
 
 TEST(PerformTest, BothChannelsOfAUnitAreMeasuredAndJudged) {
     const auto device = profile::read_device_profile(profiles + "devices/harrowgill-duo.toml");
     QuietBench bench;
-    const Run run = run_on(profile::read_rig("simulated"), device, bench);
+    const check::Run run = run_on(profile::read_rig("simulated"), device, bench);
     EXPECT_EQ(run.judgements.size(), 2 * device.requirements.size());
     std::vector<double> gains;
     for (const auto& step : run.steps)

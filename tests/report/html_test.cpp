@@ -58,7 +58,8 @@ TEST(HtmlTest, OpensOfflineHoldsEveryRequirementAndIsWellFormed) {
         // Every element that opens closes, in order.
         std::vector<std::string> open;
         const std::regex tag("<(/?)([a-z0-9]+)[^>]*?(/?)>");
-        const std::string body = page.substr(page.find("<body>"));
+        const std::size_t begin = page.find("<body>");
+        const std::string body = page.substr(begin, page.find("</html>") - begin);
         for (std::sregex_iterator it(body.begin(), body.end(), tag), end; it != end; ++it) {
             const std::string name = (*it)[2];
             if (!(*it)[3].str().empty() || name == "br" || name == "meta") continue;
@@ -70,7 +71,7 @@ TEST(HtmlTest, OpensOfflineHoldsEveryRequirementAndIsWellFormed) {
                 open.pop_back();
             }
         }
-        EXPECT_EQ(open, std::vector<std::string>{"html"}) << "only <html> was opened before <body>";
+        EXPECT_TRUE(open.empty());
     }
 }
 
@@ -87,7 +88,9 @@ TEST(SheetTest, LinesKeepToTheirWidthAndColumnsAlign) {
         const auto at = std::min(line.find("● pass"), line.find("▼ FAIL"));
         if (at == std::string::npos) continue;
         const std::size_t column = columns(line.substr(0, at));
-        if (word_column != 0) EXPECT_EQ(column, word_column) << line;
+        if (word_column != 0) {
+            EXPECT_EQ(column, word_column) << line;
+        }
         word_column = column;
     }
     EXPECT_GT(word_column, 0U);
