@@ -36,13 +36,15 @@ std::string band_picture_svg(const check::Judgement& judgement) {
     if (!judgement.figure || requirement.quantity == "polarity" || (!requirement.min && !requirement.max))
         return "";
     const double value = judgement.figure->value, spread = judgement.figure->uncertainty;
-    // The limits lie a quarter in from the ends; a one-sided limit gets the room of twice the distance to it.
-    double low = requirement.min.value_or(0.0), high = requirement.max.value_or(0.0);
-    if (!requirement.min || !requirement.max) {
-        const double limit = requirement.min ? low : high;
-        const double room = std::max({2.0 * std::abs(value - limit), 4.0 * spread, 1e-9});
-        (requirement.min ? high : low) = requirement.min ? limit + room : limit - room;
-    }
+    // The limits lie a quarter in from the ends. A one-sided limit has a room of fixed size, so that pictures
+    // compare: 30 dB, or three octaves.
+    const bool octaves = requirement.unit == "Hz";
+    const auto scaled = [&](double v) { return octaves ? std::log2(std::max(v, 1e-3)) : v; };
+    double low = requirement.min ? scaled(*requirement.min) : 0.0,
+           high = requirement.max ? scaled(*requirement.max) : 0.0;
+    if (!requirement.min || !requirement.max)
+        (requirement.min ? high : low) =
+            requirement.min ? low + (octaves ? 3.0 : 30.0) : high - (octaves ? 3.0 : 30.0);
     const double span = (high - low) * 1.5, start = low - (high - low) * 0.25;
     const auto x = [&](double v) { return left + (right - left) * std::clamp((v - start) / span, 0.0, 1.0); };
     const double bar_left = requirement.min ? x(low) : left - 10,
@@ -53,8 +55,8 @@ std::string band_picture_svg(const check::Judgement& judgement) {
     if (requirement.min) out += edge(x(low));
     if (requirement.max) out += edge(x(high));
     out += fmt::format("<line class=\"reach\" x1=\"{:.1f}\" x2=\"{:.1f}\" y1=\"{}\" y2=\"{}\"/>",
-                       x(value - spread), x(value + spread), middle, middle);
-    return out + mark(judgement.verdict, x(value)) + "</svg>";
+                       x(scaled(value - spread)), x(scaled(value + spread)), middle, middle);
+    return out + mark(judgement.verdict, x(scaled(value))) + "</svg>";
 }
 
 std::string band_picture_text(const check::Judgement& judgement) {

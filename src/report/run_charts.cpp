@@ -9,6 +9,8 @@ namespace coldpin::report {
 
 namespace {
 
+constexpr std::size_t fewest_for_a_line = 12;  // a few tones are dots: between them nothing was measured
+
 ChartSeries series_of(const measure::Curve& curve, const std::string& name) {
     ChartSeries series;
     series.name = name.empty() ? "measured" : name;
@@ -32,7 +34,8 @@ Chart curve_chart(const check::Run& run, const std::string& quantity, const std:
     chart.mask = mask_of(run, quantity);
     for (const auto& step : run.steps)
         if (const measure::Curve* curve = step.findings.curve(quantity))
-            chart.series.push_back(series_of(*curve, group_name(step.unit_channel, step.setting)));
+            if (curve->x.size() >= fewest_for_a_line)
+                chart.series.push_back(series_of(*curve, group_name(step.unit_channel, step.setting)));
     return chart;
 }
 
@@ -40,7 +43,8 @@ Chart curve_chart(const check::Run& run, const std::string& quantity, const std:
 Chart rejection_chart(const check::Run& run) {
     Chart chart = curve_chart(run, "common_mode_rejection", "Common-mode rejection", "dB, more is better");
     for (const auto& step : run.steps) {
-        if (step.measure != "cmrr" || step.findings.curve("common_mode_rejection") != nullptr) continue;
+        const measure::Curve* curve = step.findings.curve("common_mode_rejection");
+        if (step.measure != "cmrr" || (curve != nullptr && curve->x.size() >= fewest_for_a_line)) continue;
         ChartSeries series;
         series.name = group_name(step.unit_channel, step.setting);
         series.dots = true;

@@ -53,8 +53,8 @@ class Backend {
     virtual std::string description() const = 0;  // for reports: host API, device, rate
 };
 
-// Throws CannotMeasure for a device that is not there (naming those that are), UsageError for unfit channels or rate; CannotMeasure
-// when the audio system does not answer.
+// Throws CannotMeasure for a device that is not there (naming those that are), UsageError for unfit channels
+// or rate; CannotMeasure when the audio system does not answer.
 std::unique_ptr<Backend> open_backend(const Setup& setup);
 
 // A stream whose server died cannot be closed without hanging for minutes; it is then left behind and this

@@ -27,7 +27,8 @@ struct ContentReport {
 // repeated blocks, and for tones, multitones and sweeps a delay that stays constant through the capture
 // (a change of one frame and more is found when the stimulus stands 20 dB out of the noise in its own band;
 // where it does not, proven = false). Low in a sweep less is
-// found: below 1 kHz from a few frames on, below 150 Hz from some tens. `expected_delay_frames` narrows the search when known.
+// found: below 1 kHz from a few frames on, below 150 Hz from some tens. `expected_delay_frames` narrows the
+// search when known.
 ContentReport check_content(std::span<const double> channel, double rate_hz, const signal::Stimulus& stimulus,
                             std::optional<double> expected_delay_frames = std::nullopt);
 
