@@ -20,8 +20,9 @@ namespace {
 // A stream whose audio server died is left behind (closing it would hang); ordinary exit would then wait for
 // it in the library's own clean-up.
 [[noreturn]] void leave(int status) {
-    std::fflush(stdout);
-    std::fflush(stderr);
+    // Nothing can be done any more about what cannot be written.
+    static_cast<void>(std::fflush(stdout));
+    static_cast<void>(std::fflush(stderr));
     if (coldpin::rig::teardown_was_abandoned()) std::_Exit(status);
     std::exit(status);
 }

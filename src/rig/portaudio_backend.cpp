@@ -127,7 +127,7 @@ void wait_for_frames(Job& job, PaStream* stream) {
 }
 
 void run(const std::shared_ptr<Job>& job) {
-    const auto tell = [&](bool closed, std::exception_ptr failure) {
+    const auto tell = [&](bool closed, const std::exception_ptr& failure) {
         const std::lock_guard lock(job->mutex);
         job->recorded = true;
         job->closed = job->closed || closed;
