@@ -14,6 +14,7 @@
 #include "commands.h"
 #include "common_options.h"
 #include "exit_status.h"
+#include "introduction.h"
 #include "terminal.h"
 #include "terminal_bench.h"
 #include "version.h"
@@ -31,28 +32,6 @@ struct Words {
     check::RunDetails details;
 };
 
-// What a hand must do before the first note is played; a simulated rig has no hands.
-void introduce(const profile::DeviceProfile& device, const rig::Session& session,
-               const check::CapturePlan& plan, TerminalBench& bench, const Words& words) {
-    if (session.setup().audio.backend != rig::BackendKind::portaudio) return;
-    fmt::print(stderr, "{}\n", device.name);
-    for (const auto& caution : device.cautions) fmt::print(stderr, "  Caution: {}\n", caution);
-    fmt::print(stderr,
-               "  Caution: phantom power off, and measured off, before the interface's output meets the "
-               "preamp's input.\n"
-               "  Caution: monitors and headphones on this interface off.\n");
-    if (words.yes && !plan.changes.empty())
-        throw UsageError(
-            fmt::format("--yes, but this plan needs {} change(s) at the bench, the first: \"{}\"\n"
-                        "Leave --yes out.",
-                        plan.changes.size(), plan.changes.front()));
-    if (words.yes) return;
-    std::string setting = device.settings.front().name;
-    bench.ask(fmt::format("Connect the unit{}{}.",
-                          device.channels.empty() ? "" : ", channel " + device.channels.front(),
-                          setting.empty() ? "" : ", gain control at '" + setting + "'"));
-}
-
 int check_unit(const Words& words) {
     const profile::DeviceProfile device = profile::read_device_profile(words.device);
     const profile::RigFile rig = read_rig(words.rig, &device);
@@ -61,7 +40,7 @@ int check_unit(const Words& words) {
     {
         TerminalBench bench(words.yes);
         const check::CapturePlan plan = check::plan_captures(device, session);
-        introduce(device, session, plan, bench, words);
+        introduce(device, session, plan, bench, words.yes);
         run = check::perform(device, rig, session, bench, words.details);
     }
     const auto folder = records::save_run(run, words.runs, {{"report.html", report::html(run)}});

@@ -13,6 +13,7 @@
 #include "commands.h"
 #include "common_options.h"
 #include "exit_status.h"
+#include "introduction.h"
 #include "terminal.h"
 #include "terminal_bench.h"
 #include "version.h"
@@ -38,6 +39,7 @@ int measure_once(const Words& words) {
     check::Run run;
     {
         TerminalBench bench(words.yes);
+        introduce(plan, session, check::plan_captures(plan, session), bench, words.yes);
         check::RunDetails details;
         details.tool_version = tool_version;
         details.time_utc = utc_now();
