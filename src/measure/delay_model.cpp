@@ -99,7 +99,7 @@ double delay_variance(const std::vector<Row>& rows, const Normal& normal, const 
 }
 
 // Levenberg and Marquardt. `free` unknowns are fitted, the rest stay where they are (zero).
-Fitted fit_order(const std::vector<Row>& rows, Unknowns start, int free) {
+Fitted fit_order(const std::vector<Row>& rows, const Unknowns& start, int free) {
     Fitted fitted{start, 0.0, 0.0};
     double damping = 1e-3;
     Normal normal;
@@ -166,6 +166,7 @@ DelayFit fit_delay(const Transfer& transfer) {
         for (double hz : units::logarithmic_grid(low, std::min(high, 40.0 * low), 6)) grid.push_back(hz);
     }
     std::vector<TransferPoint> values;
+    values.reserve(grid.size());
     for (double hz : grid) values.push_back(transfer.at(hz));
     const Start start = line_up(grid, values, transfer.rate_hz);
 

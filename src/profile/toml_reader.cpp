@@ -120,7 +120,7 @@ std::string TableReader::need_text(std::string_view key) {
 
 std::optional<std::string> TableReader::choice(std::string_view key,
                                                const std::vector<std::string_view>& choices) {
-    const auto value = text(key);
+    auto value = text(key);
     if (value && std::find(choices.begin(), choices.end(), *value) == choices.end())
         fail(key, "'" + shown(*value) + "'",
              choices.size() == 1 && choices.front().empty() ? "no unit (\"\")" : listed(choices),

@@ -58,7 +58,7 @@ void make_folder(const fs::path& folder) {
 fs::path save_run(const check::Run& run, const fs::path& parent,
                   const std::map<std::string, std::string>& files) {
     make_folder(parent);
-    const fs::path folder = free_name(parent, base_name(run));
+    fs::path folder = free_name(parent, base_name(run));
     fs::path temporary = folder;
     temporary += unfinished;
     try {

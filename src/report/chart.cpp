@@ -85,14 +85,17 @@ void add_grid(std::string& out, const Chart& chart, const Axes& axes) {
             left, width - right, axes.y(value), axes.y(value), left - 7, axes.y(value) + 4, escaped(text));
     };
     if (chart.logarithmic_y) {
-        for (double value = axes.y_low; value <= axes.y_high * 1.001; value *= 10.0)
-            y_line(value, chart.y_label.rfind("V", 0) == 0 ? density_text(value) : tick_text(value));
+        const int decades = static_cast<int>(std::lround(std::log10(axes.y_high / axes.y_low)));
+        for (int i = 0; i <= decades; ++i) {
+            const double value = axes.y_low * std::pow(10.0, i);
+            y_line(value, chart.y_label.front() == 'V' ? density_text(value) : tick_text(value));
+        }
     } else {
         const double step = nice_step(axes.y_high - axes.y_low, 6);
         const int ticks = static_cast<int>(std::lround((axes.y_high - axes.y_low) / step));
         for (int i = 0; i <= ticks; ++i) y_line(axes.y_low + i * step, tick_text(axes.y_low + i * step));
     }
-    for (double decade = 1.0; decade <= 1e6; decade *= 10.0) {
+    for (const double decade : {1.0, 10.0, 100.0, 1000.0, 10000.0, 100000.0}) {
         for (int digit = 1; digit <= 9; ++digit) {
             const double hz = decade * digit;
             if (!inside(chart, hz)) continue;

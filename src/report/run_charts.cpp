@@ -73,7 +73,7 @@ std::string run_charts(const check::Run& run) {
     noise.logarithmic_y = true;
     const bool scaled = std::any_of(run.steps.begin(), run.steps.end(), [](const auto& step) {
         const auto* curve = step.findings.curve("noise_density");
-        return curve != nullptr && curve->y_unit.rfind("V", 0) == 0;
+        return curve != nullptr && !curve->y_unit.empty() && curve->y_unit.front() == 'V';
     });
     if (!scaled) noise.y_label = "of full scale per √Hz";
     for (auto& series : noise.series) series.uncertainty.clear();  // the line's own roughness shows it

@@ -69,8 +69,11 @@ std::string Table::text(const std::string& indent, bool colour) const {
             const bool right = std::find(right_.begin(), right_.end(), c) != right_.end();
             std::string cell = right ? pad + cells[c] : cells[c];
             if (c == last && colour && !last_code.empty())
-                cell = "\033[" + last_code + "m" + cell + "\033[0m";
-            out += cell + (right ? "" : (c == last ? "" : pad)) + (c == last ? "" : "   ");
+                cell.insert(0, "\033[" + last_code + "m").append("\033[0m");
+            out += cell;
+            if (c == last) continue;
+            if (!right) out += pad;
+            out += "   ";
         }
         while (!out.empty() && out.back() == ' ') out.pop_back();
         return out + "\n";

@@ -74,8 +74,7 @@ std::string frequency_text(double frequency_hz) {
 std::string value_text(const measure::Figure& figure) {
     if (figure.quantity == "polarity") return figure.value > 0.0 ? "upright (+1)" : "inverted (-1)";
     const Scaled scaled = scale_for(figure);
-    const std::string text =
-        with_unit(number_text(figure.value * scaled.factor, scaled.decimals), scaled.unit);
+    std::string text = with_unit(number_text(figure.value * scaled.factor, scaled.decimals), scaled.unit);
     switch (figure.bound) {
         case measure::Bound::at_least:
             return "≥ " + text;

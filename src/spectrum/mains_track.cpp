@@ -45,6 +45,7 @@ std::vector<Demodulated> demodulate(std::span<const double> samples, double rate
                                     const std::vector<int>& harmonics, const Blocks& blocks,
                                     const std::vector<double>& window) {
     std::vector<Demodulated> all;
+    all.reserve(harmonics.size());
     std::vector<double> shaped(blocks.length);
     for (int harmonic : harmonics) all.push_back({harmonic, {}, 0.0});
     for (std::size_t b = 0; b < blocks.count; ++b) {

@@ -45,6 +45,7 @@ double noise_power(const std::vector<std::complex<double>>& z) {
 
 double amplitude_ceiling(const std::vector<std::complex<double>>& z) {
     std::vector<double> sizes;
+    sizes.reserve(z.size());
     for (const auto& one : z) sizes.push_back(std::abs(one));
     std::sort(sizes.begin(), sizes.end());
     const double median = sizes[sizes.size() / 2], upper_tenth = sizes[sizes.size() * 9 / 10];
