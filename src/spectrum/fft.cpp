@@ -33,7 +33,9 @@ struct Aligned {
 };
 
 Plans plans_for(std::size_t size) {
-    static std::map<std::size_t, Plans> cache;
+    // Never destroyed: threads may still transform while the program ends, and plans are freed with the
+    // process.
+    static auto& cache = *new std::map<std::size_t, Plans>;
     const std::lock_guard lock(planner);
     auto& plans = cache[size];
     if (plans.forward == nullptr) {
