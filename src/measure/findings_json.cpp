@@ -49,6 +49,7 @@ Json to_json(const Curve& curve) {
 
 Conditions conditions_from_json(const Json& json) {
     Conditions conditions;
+    json.get_ref<const Json::object_t&>();  // items() of anything else would pass as one without a name
     for (const auto& [name, value] : json.items()) {
         if (value.is_string())
             conditions.set(name, value.get<std::string>());

@@ -1,16 +1,13 @@
 #include "coldpin/measure/gain.h"
 
-#include <algorithm>
 #include <cmath>
 #include <numbers>
-#include <optional>
 
 #include <fmt/core.h>
 
 #include "coldpin/measure/clipping.h"
 #include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/spectrum/statistics.h"
-#include "coldpin/spectrum/tone_extent.h"
 #include "coldpin/units/error.h"
 #include "coldpin/units/level.h"
 
@@ -50,6 +47,12 @@ Findings gain(const GainQuestion& question) {
                                 2.0, Bound::exact, conditions});
     findings.figures.push_back(
         {"output_level", level_dbu, "dBu", level_uncertainty_db, 2.0, Bound::exact, conditions});
+
+    if (tone.harmonics_ratio > 0.01)
+        findings.cautions.push_back(fmt::format(
+            "the tone is distorted: its harmonics are {:.2g} % of it; something is overloaded, or the unit's "
+            "gain depends on the level",
+            100.0 * tone.harmonics_ratio));
 
     if (!question.reference.empty()) {
         if (question.reference.size() != question.recording.size())

@@ -14,6 +14,7 @@
 #include "coldpin/units/physics.h"
 
 #include "noise_power.h"
+#include "steadiness.h"
 
 namespace coldpin::measure {
 
@@ -22,6 +23,7 @@ namespace {
 using spectrum::Weighting;
 
 constexpr double least_excess_db = 3.0;  // over the interface: below, a difference of powers means nothing
+constexpr double nothing = 1e-24;        // mean square: -237 dBFS, the rounding of double arithmetic
 
 // The power that is the unit's own, with its relative standard deviation, or a bound when the interface
 // drowns it.
@@ -69,12 +71,12 @@ void require_possible(const NoiseQuestion& question, double input_dbu, double un
     const double thermal_dbu =
         thermal_level_dbu(question, Weighting::none, units::celsius_zero_k + question.temperature_c);
     if (input_dbu + uncertainty_db >= thermal_dbu) return;
-    throw CannotMeasure(
-        fmt::format("noise at the input comes out at {:.1f} dBu, below the {:.1f} dBu thermal noise of {:g} "
-                    "ohm: physically impossible.\n"
-                    "Likely causes: input full scale or gain is wrong (dBFS taken for dBu, a knob moved), or "
-                    "the input is not terminated with {:g} ohm.",
-                    input_dbu, thermal_dbu, *question.source_ohms, *question.source_ohms));
+    throw CannotMeasure(fmt::format(
+        "noise at the input comes out at {:.1f} dBu, below the {:.1f} dBu thermal noise of {:g} "
+        "ohm: physically impossible.\n"
+        "Likely causes: input full scale or gain is wrong (dBFS taken for dBu, a knob moved), the "
+        "input is not terminated with {:g} ohm, or the unit passes less than the band (--band).",
+        input_dbu, thermal_dbu, *question.source_ohms, *question.source_ohms));
 }
 
 void require_usable(const NoiseQuestion& question) {
@@ -87,8 +89,17 @@ void require_usable(const NoiseQuestion& question) {
         throw UsageError(fmt::format(
             "the band {:g} to {:g} Hz does not fit a sample rate of {:g} Hz, which ends at {:g} Hz (--band)",
             question.band.low_hz, question.band.high_hz, question.rate_hz, 0.5 * question.rate_hz));
+    if (question.source_ohms && !(*question.source_ohms > 0.0))
+        throw UsageError(fmt::format("a source of {:g} ohm cannot be: it must be above 0 (--source-ohms)",
+                                     *question.source_ohms));
+    if (!(question.temperature_c > -units::celsius_zero_k))
+        throw UsageError(
+            fmt::format("a source at {:g} degC cannot be (--temperature-c)", question.temperature_c));
     require_not_silent(question.recording, "the recording");
     require_unclipped(question.recording, "the recording");
+    if (question.interface_idle.empty()) return;
+    require_not_silent(question.interface_idle, "the recording of the interface alone");
+    require_unclipped(question.interface_idle, "the recording of the interface alone");
 }
 
 Curve density_curve(const NoiseQuestion& question, const spectrum::AveragedSpectrum& spectrum) {
@@ -123,89 +134,131 @@ Curve density_curve(const NoiseQuestion& question, const spectrum::AveragedSpect
     return curve;
 }
 
-}  // namespace
+struct Spectra {
+    spectrum::AveragedSpectrum whole;
+    std::optional<spectrum::AveragedSpectrum> idle, beside;
+    double steadiness_std = 0.0;  // relative, of the power; 0 when the noise is steady
+};
 
-Findings noise(const NoiseQuestion& question) {
-    require_usable(question);
-    const auto spectrum = noise_spectrum(question.recording, question.rate_hz);
-    std::optional<spectrum::AveragedSpectrum> idle;
-    if (!question.interface_idle.empty()) {
-        require_not_silent(question.interface_idle, "the recording of the interface alone");
-        idle = noise_spectrum(question.interface_idle, question.rate_hz);
+Spectra spectra_of(const NoiseQuestion& question, std::vector<std::string>& cautions) {
+    Spectra spectra;
+    spectra.whole = noise_spectrum(question.recording, question.rate_hz);
+    if (!question.interface_idle.empty())
+        spectra.idle = noise_spectrum(question.interface_idle, question.rate_hz);
+    else if (!question.interface_beside.empty())
+        spectra.beside = noise_spectrum(question.interface_beside, question.rate_hz);
+    const auto power = weighted_power(spectra.whole, question.band, Weighting::none);
+    if (!(power.mean_square > nothing))
+        throw CannotMeasure("the recording holds nothing within the band: is the right input recorded?");
+    const auto steadiness = noise_steadiness(question.recording, question.rate_hz, question.band,
+                                             std::sqrt(power.variance) / power.mean_square);
+    if (!steadiness.steady) {
+        spectra.steadiness_std = steadiness.relative_std;
+        cautions.push_back(fmt::format(
+            "the noise is not steady: parts of the recording differ by {:.2g} dB, more than chance "
+            "allows (crackle, a bad contact, something switching); the uncertainty counts that",
+            steadiness.spread_db));
     }
-    std::optional<spectrum::AveragedSpectrum> beside;
-    if (!idle && !question.interface_beside.empty())
-        beside = noise_spectrum(question.interface_beside, question.rate_hz);
-    Findings findings;
-    findings.kind = "noise";
-    bool drowned = false;
-    double least_excess_beside_db = 1e9;
-    for (Weighting weighting : {Weighting::none, Weighting::a, Weighting::c, Weighting::itu468}) {
-        const auto whole = weighted_power(spectrum, question.band, weighting);
-        const auto alone = idle ? weighted_power(*idle, question.band, weighting) : spectrum::BandPower{};
-        OwnPower own = own_power(whole, idle ? &alone : nullptr);
-        if (beside) {
-            const double excess_db = units::db_from_power_ratio(
-                whole.mean_square / weighted_power(*beside, question.band, weighting).mean_square);
-            least_excess_beside_db = std::min(least_excess_beside_db, excess_db);
-            if (excess_db < least_excess_db) own.bound = Bound::at_most;
-        }
-        drowned = drowned || own.bound != Bound::exact;
-        const double level = question.scale.level_from_sample_rms(std::sqrt(own.mean_square));
-        const double uncertainty_db = spectrum::combine(spectrum::power_uncertainty_db(own.relative_std),
-                                                        question.scale.uncertainty_db);
-        Conditions conditions = conditions_for(question, weighting, idle && own.bound == Bound::exact);
-        findings.figures.push_back(
-            {"noise_output", level, question.scale.unit(), uncertainty_db, 2.0, own.bound, conditions});
-        if (!question.gain_db || !question.scale.full_scale_dbu) continue;
-        const double input = level - question.gain_db->value_db;
-        const double input_uncertainty_db =
-            spectrum::combine(uncertainty_db, question.gain_db->uncertainty_db);
-        conditions.set("gain_db", question.gain_db->value_db);
-        if (question.source_ohms) conditions.set("source_ohms", *question.source_ohms);
-        if (question.source_ohms && weighting == Weighting::none)
-            require_possible(question, input, input_uncertainty_db);
-        findings.figures.push_back(
-            {"noise_input_referred", input, "dBu", input_uncertainty_db, 2.0, own.bound, conditions});
+    return spectra;
+}
+
+OwnPower own_power_of(const NoiseQuestion& question, const Spectra& spectra, Weighting weighting,
+                      double& least_excess_beside_db) {
+    const auto whole = weighted_power(spectra.whole, question.band, weighting);
+    const auto alone =
+        spectra.idle ? weighted_power(*spectra.idle, question.band, weighting) : spectrum::BandPower{};
+    OwnPower own = own_power(whole, spectra.idle ? &alone : nullptr);
+    own.relative_std = std::max(own.relative_std, spectra.steadiness_std);
+    if (spectra.beside) {
+        const double beside = weighted_power(*spectra.beside, question.band, weighting).mean_square;
+        const double excess_db = units::db_from_power_ratio(whole.mean_square / std::max(beside, nothing));
+        least_excess_beside_db = std::min(least_excess_beside_db, excess_db);
+        if (excess_db < least_excess_db) own.bound = Bound::at_most;
     }
-    if (question.source_ohms) {
-        if (const Figure* input =
-                findings.figure("noise_input_referred", {{"weighting", std::string("none")}})) {
-            // The source's own share is brought from its temperature to the 290 K the noise figure refers to.
-            const double reference = units::power_ratio_from_db(
-                thermal_level_dbu(question, Weighting::none, units::noise_reference_temperature_k));
-            const double source = reference * (units::celsius_zero_k + question.temperature_c) /
-                                  units::noise_reference_temperature_k;
-            const double power = units::power_ratio_from_db(input->value) - source + reference;
-            const double share = units::power_ratio_from_db(input->value) / std::max(power, 1e-300);
-            if (power > 0.0)
-                findings.figures.push_back(
-                    {"noise_figure", units::db_from_power_ratio(power / reference), "dB",
-                     input->uncertainty * share, 2.0, input->bound,
-                     Conditions{
-                         {"source_ohms", *question.source_ohms},
-                         {"temperature_c", question.temperature_c},
-                         {"band_hz", std::vector<double>{question.band.low_hz, question.band.high_hz}}}});
-        }
+    return own;
+}
+
+void add_levels(Findings& findings, const NoiseQuestion& question, Weighting weighting, const OwnPower& own) {
+    const double level = question.scale.level_from_sample_rms(std::sqrt(own.mean_square));
+    const double uncertainty_db =
+        spectrum::combine(spectrum::power_uncertainty_db(own.relative_std), question.scale.uncertainty_db);
+    Conditions conditions =
+        conditions_for(question, weighting, !question.interface_idle.empty() && own.bound == Bound::exact);
+    findings.figures.push_back(
+        {"noise_output", level, question.scale.unit(), uncertainty_db, 2.0, own.bound, conditions});
+    if (!question.gain_db || !question.scale.full_scale_dbu) return;
+    const double input = level - question.gain_db->value_db;
+    const double input_uncertainty_db = spectrum::combine(uncertainty_db, question.gain_db->uncertainty_db);
+    conditions.set("gain_db", question.gain_db->value_db);
+    if (question.source_ohms) conditions.set("source_ohms", *question.source_ohms);
+    if (question.source_ohms && weighting == Weighting::none)
+        require_possible(question, input, input_uncertainty_db);
+    findings.figures.push_back(
+        {"noise_input_referred", input, "dBu", input_uncertainty_db, 2.0, own.bound, conditions});
+}
+
+// The source's own share is brought from its temperature to the 290 K that the noise figure refers to.
+void add_noise_figure(Findings& findings, const NoiseQuestion& question) {
+    const Figure* input = findings.figure("noise_input_referred", {{"weighting", std::string("none")}});
+    if (!question.source_ohms || input == nullptr) return;
+    const double reference = units::power_ratio_from_db(
+        thermal_level_dbu(question, Weighting::none, units::noise_reference_temperature_k));
+    const double source =
+        reference * (units::celsius_zero_k + question.temperature_c) / units::noise_reference_temperature_k;
+    const double whole = units::power_ratio_from_db(input->value), power = whole - source + reference;
+    if (!(power > 0.0)) {
+        findings.cautions.push_back(
+            "the noise figure is left out: at this temperature the source alone makes more noise than 290 K "
+            "allow to refer to");
+        return;
     }
-    findings.curves.push_back(density_curve(question, spectrum));
+    findings.figures.push_back(
+        {"noise_figure", units::db_from_power_ratio(power / reference), "dB",
+         input->uncertainty * whole / power, 2.0, input->bound,
+         Conditions{{"source_ohms", *question.source_ohms},
+                    {"temperature_c", question.temperature_c},
+                    {"band_hz", std::vector<double>{question.band.low_hz, question.band.high_hz}}}});
+}
+
+void say_interface(Findings& findings, double least_excess_beside_db) {
+    const bool drowned = std::any_of(findings.figures.begin(), findings.figures.end(),
+                                     [](const Figure& figure) { return figure.bound != Bound::exact; });
     if (drowned)
         findings.cautions.push_back(
             "the interface's own noise is less than 3 dB below what was recorded: the unit's noise is at "
-            "most the value given; raise its "
-            "gain, or use a quieter input");
-    if (!drowned && least_excess_beside_db < 10.0)
+            "most the value given; raise its gain, or use a quieter input");
+    else if (least_excess_beside_db < 10.0)
         findings.cautions.push_back(fmt::format(
             "an input that hears the interface alone is only {:.1f} dB quieter: up to {:.1f} dB of this "
             "noise may be the interface's",
             least_excess_beside_db,
             -units::db_from_power_ratio(1.0 - units::power_ratio_from_db(-least_excess_beside_db))));
+}
+
+void say_missing(Findings& findings, const NoiseQuestion& question) {
     if (question.gain_db && !question.scale.full_scale_dbu)
         findings.cautions.push_back(
             "noise at the input needs volts: without --input-full-scale-dbu only the level in dBFS is known");
     if (question.source_ohms && !question.gain_db)
         findings.cautions.push_back("the noise figure needs the gain (--gain-db)");
-    describe_lines(spectrum, question.band, findings.cautions);
+}
+
+}  // namespace
+
+Findings noise(const NoiseQuestion& question) {
+    require_usable(question);
+    Findings findings;
+    findings.kind = "noise";
+    const Spectra spectra = spectra_of(question, findings.cautions);
+    double least_excess_beside_db = 1e9;
+    for (Weighting weighting : {Weighting::none, Weighting::a, Weighting::c, Weighting::itu468})
+        add_levels(findings, question, weighting,
+                   own_power_of(question, spectra, weighting, least_excess_beside_db));
+    add_noise_figure(findings, question);
+    findings.curves.push_back(density_curve(question, spectra.whole));
+    say_interface(findings, least_excess_beside_db);
+    say_missing(findings, question);
+    describe_lines(spectra.whole, question.band, findings.cautions);
     return findings;
 }
 

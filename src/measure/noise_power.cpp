@@ -8,15 +8,30 @@
 
 namespace coldpin::measure {
 
-spectrum::AveragedSpectrum noise_spectrum(std::span<const double> samples, double rate_hz) {
-    // A power of two near a second; at least four of them side by side while the recording allows.
-    std::size_t segment = 65536;
-    while (static_cast<double>(segment) > 1.5 * rate_hz) segment /= 2;
-    while (static_cast<double>(segment) < 0.75 * rate_hz) segment *= 2;
-    while (segment > 4096 && segment * 3 > samples.size()) segment /= 2;
-    spectrum::WelchSettings settings;
-    settings.segment = segment;
-    return spectrum::averaged_spectrum(samples, rate_hz, settings);
+namespace {
+
+constexpr double overlap = 0.75;  // of the segments
+
+// What lies up to four times over the median is the noise's own scatter, not a line.
+bool is_line(double density, double floor) {
+    return density > 4.0 * floor;
+}
+
+// Segments overlap, and the recording's ends are covered by fewer windows than its middle: with the coverage
+// E(t) (the sum of squared windows), the power scatters as that of a recording of (sum E)^2 / sum E^2.
+double effective_duration_s(const spectrum::AveragedSpectrum& spectrum) {
+    constexpr std::size_t points = 256;
+    const auto hop = static_cast<std::size_t>(points * (1.0 - overlap));
+    const auto window = spectrum::window_samples(spectrum.window, points);
+    std::vector<double> coverage((spectrum.segments - 1) * hop + points, 0.0);
+    for (std::size_t s = 0; s < spectrum.segments; ++s)
+        for (std::size_t j = 0; j < points; ++j) coverage[s * hop + j] += window[j] * window[j];
+    double sum = 0.0, squares = 0.0;
+    for (double e : coverage) {
+        sum += e;
+        squares += e * e;
+    }
+    return sum * sum / squares / (static_cast<double>(points) * spectrum.bin_hz);
 }
 
 // Second moment of the window's power spectrum: sum (w')^2 / sum w^2 / (2 pi)^2, by Parseval.
@@ -56,6 +71,20 @@ std::vector<double> noise_under_lines(const spectrum::AveragedSpectrum& spectrum
     return floor;
 }
 
+}  // namespace
+
+spectrum::AveragedSpectrum noise_spectrum(std::span<const double> samples, double rate_hz) {
+    // A power of two near a second; at least four of them side by side while the recording allows.
+    std::size_t segment = 65536;
+    while (static_cast<double>(segment) > 1.5 * rate_hz) segment /= 2;
+    while (static_cast<double>(segment) < 0.75 * rate_hz) segment *= 2;
+    while (segment > 4096 && segment * 3 > samples.size()) segment /= 2;
+    spectrum::WelchSettings settings;
+    settings.segment = segment;
+    settings.overlap = overlap;
+    return spectrum::averaged_spectrum(samples, rate_hz, settings);
+}
+
 spectrum::BandPower weighted_power(const spectrum::AveragedSpectrum& spectrum, const Band& band,
                                    spectrum::Weighting weighting) {
     // A window smears each line over a few bins, and a steep weighting would then weigh it by the mean of its
@@ -71,23 +100,20 @@ spectrum::BandPower weighted_power(const spectrum::AveragedSpectrum& spectrum, c
     };
     auto power = spectrum::band_power(spectrum, band.low_hz, band.high_hz, weight);
     const std::vector<double> floor = noise_under_lines(spectrum);
+    // The square of an estimated density is on average too large by its own relative variance.
+    const double square_bias = 1.0 + 2.0 / spectrum.degrees_of_freedom;
     power.variance = 0.0;
     for (std::size_t k = 0; k < floor.size(); ++k) {
         const double hz = static_cast<double>(k) * spectrum.bin_hz;
         const double inside = std::min(hz + 0.5 * spectrum.bin_hz, band.high_hz) -
                               std::max(hz - 0.5 * spectrum.bin_hz, band.low_hz);
         if (inside <= 0.0) continue;
-        const double w = weight(hz), w4 = w * w * w * w;
-        // What lies up to four times over the median is the noise's own scatter, not a line.
-        const double line = spectrum.density[k] > 4.0 * floor[k] ? spectrum.density[k] - floor[k] : 0.0;
-        const double noise = line > 0.0 ? floor[k] : std::max(spectrum.density[k], floor[k]);
-        power.variance += w4 * noise * (noise + 2.0 * line) * inside;
+        const double w = spectrum::weighting_gain(weighting, hz), w4 = w * w * w * w, d = spectrum.density[k];
+        const double squares =
+            is_line(d, floor[k]) ? floor[k] * (floor[k] + 2.0 * (d - floor[k])) : d * d / square_bias;
+        power.variance += w4 * squares * inside;
     }
-    // Segments at the ends are covered by fewer windows than those in the middle, and the averaging of bins
-    // that were estimated themselves adds its share: together a loss of effective length that is at most one
-    // segment.
-    const double segment_s = 1.0 / spectrum.bin_hz;
-    power.variance /= std::max(spectrum.duration_s - 0.7 * segment_s, 0.3 * spectrum.duration_s);
+    power.variance /= effective_duration_s(spectrum);
     return power;
 }
 
@@ -97,23 +123,27 @@ void describe_lines(const spectrum::AveragedSpectrum& spectrum, const Band& band
     const auto last =
         std::min(spectrum.density.size() - 1, static_cast<std::size_t>(band.high_hz / spectrum.bin_hz));
     if (first >= last) return;
-    const auto begin = spectrum.density.begin() + static_cast<std::ptrdiff_t>(first),
-               end = spectrum.density.begin() + static_cast<std::ptrdiff_t>(last) + 1;
-    double total = 0.0;
-    for (auto it = begin; it != end; ++it) total += *it;
-    const auto peak = std::max_element(begin, end);
-    const auto at = static_cast<std::size_t>(peak - spectrum.density.begin());
+    const std::vector<double> floor = noise_under_lines(spectrum);
+    const auto& density = spectrum.density;
+    double total = 0.0, lines = 0.0;
+    std::size_t strongest = first;
+    for (std::size_t k = first; k <= last; ++k) {
+        total += density[k];
+        if (is_line(density[k], floor[k])) lines += density[k] - floor[k];
+        if (density[k] > density[strongest]) strongest = k;
+    }
+    if (!(lines > 0.5 * total)) return;
     const auto lobe = static_cast<std::size_t>(spectrum::main_lobe_half_width_bins(spectrum.window));
     double line = 0.0, moment = 0.0;
-    for (std::size_t k = at > first + lobe ? at - lobe : first; k <= std::min(last, at + lobe); ++k) {
-        line += spectrum.density[k];
-        moment += spectrum.density[k] * static_cast<double>(k);
+    for (std::size_t k = strongest > lobe ? strongest - lobe : 0; k <= std::min(last, strongest + lobe);
+         ++k) {
+        line += density[k];
+        moment += density[k] * static_cast<double>(k);
     }
-    if (line > 0.5 * total)
-        cautions.push_back(
-            fmt::format("more than half of the power is one line near {:.1f} Hz: hum or a tone, not noise; "
-                        "it is included in the levels",
-                        moment / line * spectrum.bin_hz));
+    cautions.push_back(
+        fmt::format("more than half of the power is in single lines, the strongest near {:.1f} Hz: hum or "
+                    "a tone, not noise; it is included in the levels",
+                    moment / line * spectrum.bin_hz));
 }
 
 }  // namespace coldpin::measure

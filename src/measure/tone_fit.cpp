@@ -11,6 +11,8 @@ namespace coldpin::measure {
 
 namespace {
 
+constexpr double faintest_std = 1e-10;  // -200 dBFS
+
 std::vector<double> without_tones(std::span<const double> stretch, double rate_hz,
                                   std::span<const double> tones_hz,
                                   const std::vector<std::complex<double>>& phasors) {
@@ -27,11 +29,6 @@ std::vector<double> without_tones(std::span<const double> stretch, double rate_h
     return rest;
 }
 
-bool on_a_tone(double hz, std::span<const double> tones_hz, double resolution_hz) {
-    return std::any_of(tones_hz.begin(), tones_hz.end(),
-                       [&](double tone) { return std::abs(tone - hz) < 1.5 * resolution_hz; });
-}
-
 }  // namespace
 
 ToneFit fit_tones(std::span<const double> stretch, double rate_hz, std::span<const double> tones_hz) {
@@ -42,21 +39,16 @@ ToneFit fit_tones(std::span<const double> stretch, double rate_hz, std::span<con
     const auto mains = length_s >= 0.5 ? spectrum::fit_mains(rest, rate_hz) : spectrum::MainsFit{};
     if (mains.found) {
         fit.mains_hz = mains.frequency_hz;
-        const bool apart =
-            std::none_of(mains.harmonics.begin(), mains.harmonics.end(), [&](const auto& harmonic) {
-                return harmonic.significant &&
-                       on_a_tone(harmonic.number * mains.frequency_hz, tones_hz, 1.0 / length_s);
-            });
-        if (apart) {
-            std::vector<double> clean(stretch.begin(), stretch.end());
-            for (std::size_t n = 0; n < clean.size(); ++n) clean[n] -= mains.hum[n];
-            fit.phasors = spectrum::fit_sines(clean, rate_hz, tones_hz).phasors;
-            rest = without_tones(clean, rate_hz, tones_hz, fit.phasors);
-        }
+        // Hum within the resolution of a tone went with the tone, so this takes nothing from one.
+        std::vector<double> clean(stretch.begin(), stretch.end());
+        for (std::size_t n = 0; n < clean.size(); ++n) clean[n] -= mains.hum[n];
+        fit.phasors = spectrum::fit_sines(clean, rate_hz, tones_hz).phasors;
+        rest = without_tones(clean, rate_hz, tones_hz, fit.phasors);
     }
     for (double tone : tones_hz) {
         const double density = spectrum::noise_density_near(rest, rate_hz, tone, std::max(15.0, 0.05 * tone));
-        fit.std.push_back(std::sqrt(density / length_s));
+        // No converter resolves less than this, however silent the samples.
+        fit.std.push_back(std::max(std::sqrt(density / length_s), faintest_std));
     }
     return fit;
 }

@@ -79,7 +79,16 @@ TEST(FindingsJsonTest, ANumberThatIsNoneNeverReachesAFile) {
 
 TEST(FindingsJsonTest, DamageNamesTheSource) {
     for (const char* text :
-         {"{}", R"({"schema": "other"})", R"({"schema": "coldpin-findings/1", "kind": 3})"})
+         {"{}", R"({"schema": "other"})", R"({"schema": "coldpin-findings/1", "kind": 3})",
+          R"({"schema": "coldpin-findings/1", "kind": "gain", "curves": [], "cautions": [], "figures": [
+                                 {"quantity": "gain", "value": 1, "unit": "dB", "uncertainty": 0.1,
+                                  "coverage_factor": 2, "bound": "exact", "conditions": 5}]})",
+          R"({"schema": "coldpin-findings/1", "kind": "gain", "curves": [], "cautions": [], "figures": [
+                                 {"quantity": "gain", "value": null, "unit": "dB", "uncertainty": 0.1,
+                                  "coverage_factor": 2, "bound": "exact", "conditions": {}}]})",
+          R"({"schema": "coldpin-findings/1", "kind": "gain", "curves": [], "cautions": [], "figures": [
+                                 {"quantity": "gain", "value": 1, "unit": "dB", "uncertainty": 0.1,
+                                  "coverage_factor": 2, "bound": "about", "conditions": {}}]})"})
         EXPECT_THROW(findings_from_json(nlohmann::ordered_json::parse(text), "x"), UsageError) << text;
 }
 

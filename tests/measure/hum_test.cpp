@@ -58,6 +58,31 @@ TEST(HumTest, WithoutHumOnlyABoundIsGiven) {
     EXPECT_FALSE(findings.cautions.empty());
 }
 
+TEST(HumTest, HumOutsideTheBandIsNamedButNotCounted) {
+    auto x = tests::hum(192000, rate, 50.02, 0.0, {1e-3});
+    tests::add(x, tests::white_noise(192000, 1e-5, 5));
+    auto question = ask(x);
+    question.band = {120.0, 20000.0};
+    const auto findings = hum(question);
+    EXPECT_NEAR(findings.figure("mains_frequency")->value, 50.02, 0.003);
+    EXPECT_EQ(findings.figure("hum_output")->bound, Bound::at_most);
+    EXPECT_LT(findings.figure("hum_output")->value, -100.0);  // the line itself is at -60 dBFS
+    question.band = {20.0, 20000.0};
+    EXPECT_NEAR(hum(question).figure("hum_output")->value, -60.0, 0.15);
+}
+
+// A line of the bound's own level is found: the bound is not below what stands out.
+TEST(HumTest, TheBoundIsWhereALineWouldBeginToStandOut) {
+    const auto x = tests::white_noise(192000, 1e-4, 5);
+    const double bound = hum(ask(x)).figure("hum_output")->value;
+    auto louder = x;
+    tests::add(louder, tests::sine(192000, rate, 50.0, units::sine_peak_from_dbfs(bound + 6.0)));
+    EXPECT_EQ(hum(ask(louder)).figure("hum_output")->bound, Bound::exact);
+    EXPECT_NEAR(
+        bound, units::dbfs_from_sample_rms(4.5 * 1e-4 * std::sqrt(2.0044 / (24000.0 * 4.0)) / std::sqrt(2.0)),
+        1.0);
+}
+
 TEST(HumTest, HumThatTheInterfaceHearsAloneIsNotTheUnits) {
     auto x = tests::hum(192000, rate, 50.0, 0.0, peaks);
     tests::add(x, tests::white_noise(192000, 1e-5, 5));
@@ -65,7 +90,9 @@ TEST(HumTest, HumThatTheInterfaceHearsAloneIsNotTheUnits) {
     tests::add(beside, tests::white_noise(192000, 1e-5, 6));
     auto question = ask(x);
     question.interface_beside = beside;
-    EXPECT_EQ(hum(question).figure("hum_output")->bound, Bound::at_most);
+    const auto findings = hum(question);
+    for (const char* quantity : {"hum_output", "hum_harmonic", "hum_to_noise"})
+        EXPECT_EQ(findings.figure(quantity)->bound, Bound::at_most) << quantity;
 }
 
 TEST(HumTest, SilenceAndShortnessAreRefused) {

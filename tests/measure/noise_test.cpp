@@ -64,23 +64,51 @@ TEST(NoiseTest, WeightsMatchThePublishedFormulaAtEveryFrequency) {
     }
 }
 
+// Of 500 recordings of 4 s, between 92 and 98.5 % lie within the stated uncertainty (95.4 % with a standard
+// deviation of 0.9 %); with hum, and in a narrow band, of 120: 88 to 100 % (1.9 %). At 8 kHz, so that there
+// are as many; what counts is the product of time and bandwidth.
 TEST(NoiseTest, TheStatedUncertaintyHoldsTheTruth) {
-    for (const char* weighting : {"none", "A"}) {
+    constexpr double slow = 8000.0;
+    struct Case {
+        double high_hz, hum_peak;
+        int seeds, fewest, most;
+    };
+    for (const Case& one : {Case{3900.0, 0.0, 500, 460, 492}, Case{3900.0, 3e-3, 120, 106, 120},
+                            Case{400.0, 0.0, 120, 106, 120}}) {
+        const double noise_power = 1e-6 * (one.high_hz - 20.0) / (0.5 * slow),
+                     hum_power = 0.5 * one.hum_peak * one.hum_peak;
+        const double truth = units::dbfs_from_sample_rms(std::sqrt(noise_power + hum_power));
         int inside = 0;
-        const double truth = expected_level(
-            1e-3, weighting[0] == 'A' ? spectrum::Weighting::a : spectrum::Weighting::none, 20.0, 2000.0);
-        for (unsigned seed = 0; seed < 300; ++seed) {
-            const auto x = tests::white_noise(96000, 1e-3, seed);
+        for (int seed = 0; seed < one.seeds; ++seed) {
+            auto x = tests::white_noise(32000, 1e-3, static_cast<unsigned>(seed) + 1000);
+            if (one.hum_peak > 0.0) tests::add(x, tests::sine(32000, slow, 50.02, one.hum_peak));
             auto question = ask(x);
-            question.band = {20.0, 2000.0};  // a narrow band, where chance is largest
-            const auto figure =
-                *noise(question).figure("noise_output", {{"weighting", std::string(weighting)}});
+            question.rate_hz = slow;
+            question.band = {20.0, one.high_hz};
+            const auto figure = *noise(question).figure("noise_output");
             inside += std::abs(figure.value - truth) <= figure.uncertainty;
         }
-        // 95 % of 300 is 285 with a standard deviation of 3.8: four of those either way.
-        EXPECT_GE(inside, 270) << weighting;
-        EXPECT_LE(inside, 299) << weighting;
+        EXPECT_GE(inside, one.fewest) << one.high_hz << " " << one.hum_peak;
+        EXPECT_LE(inside, one.most) << one.high_hz << " " << one.hum_peak;
     }
+}
+
+TEST(NoiseTest, CrackleIsSaidAndCountedAndSteadyNoiseIsNot) {
+    auto x = tests::white_noise(192000, 1e-4, 3);
+    EXPECT_TRUE(noise(ask(x)).cautions.empty());
+    for (std::size_t k = 0; k < 40; ++k) x[100000 + 37 * k] += 0.002;
+    const auto findings = noise(ask(x));
+    EXPECT_THAT(findings.cautions, testing::Contains(testing::HasSubstr("not steady")));
+    EXPECT_GT(findings.figure("noise_output")->uncertainty, 0.5);
+}
+
+TEST(NoiseTest, ATestToneOrSeveralHumLinesAreSaidToBeNoNoise) {
+    auto tone = tests::sine(192000, rate, 997.0, 0.01);
+    tests::add(tone, tests::white_noise(192000, 1e-5, 1));
+    EXPECT_THAT(noise(ask(tone)).cautions, testing::Contains(testing::HasSubstr("near 997.0 Hz")));
+    auto hum = tests::hum(192000, rate, 50.02, 0.0, {5e-4, 4e-4, 4e-4, 4e-4, 4e-4});
+    tests::add(hum, tests::white_noise(192000, 4e-4, 1));
+    EXPECT_THAT(noise(ask(hum)).cautions, testing::Contains(testing::HasSubstr("single lines")));
 }
 
 TEST(NoiseTest, AHumLineDoesNotBlowUpTheUncertainty) {
@@ -160,7 +188,14 @@ TEST(NoiseTest, UnfitBandsAndRecordingsAreRefused) {
     EXPECT_THROW(noise(question), UsageError);
     question.band = {200.0, 100.0};
     EXPECT_THROW(noise(question), UsageError);
+    question = ask(x);
+    question.source_ohms = 0.0;
+    EXPECT_THROW(noise(question), UsageError);
+    question.source_ohms = 150.0;
+    question.temperature_c = -300.0;
+    EXPECT_THROW(noise(question), UsageError);
     EXPECT_THROW(noise(ask(std::vector<double>(5000, 0.1))), UsageError);
+    EXPECT_THROW(noise(ask(std::vector<double>(48000, 0.1))), CannotMeasure);  // an offset alone
     EXPECT_THROW(noise(ask(std::vector<double>(48000, 0.0))), CannotMeasure);
 }
 

@@ -30,8 +30,11 @@ struct CmrrQuestion {
 
 // Figures: common_mode_rejection (dB, conditions.frequency_hz), bound at_least when noise or the fixture
 // limits it; for a sweep or multitone also the curve common_mode_rejection. Tones are detected synchronously
-// over all of their length, so that a residual far under the noise is found; the leakage is subtracted as a
-// complex number. Throws CannotMeasure when the differential tone is missing or clipped.
+// over all of their length, so that a residual far under the noise is found; the leakage is subtracted sample
+// by sample, and 0.1 % of it stays as uncertainty. A bound claims 95 %; where the common-mode tone is not
+// clearly heard it holds wherever in the recording the tone lies. Two clocks are followed. Throws
+// CannotMeasure when the differential tone is missing, a recording is clipped, or a sweep's place is unknown;
+// UsageError for unfit frequencies, stimuli of different kinds, or a leakage recording that is too short.
 Findings common_mode_rejection(const CmrrQuestion& question);
 
 }  // namespace coldpin::measure

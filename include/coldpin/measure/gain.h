@@ -19,8 +19,10 @@ struct GainQuestion {
 
 // Figures: gain (dB), output_level (dBu), phase (degrees in (-180, 180], output minus reference) when a
 // reference is given. The tone is looked for anywhere in the recording. Cautions: mains harmonic at the
-// frequency, tone short, off-frequency clocks (frequency is then fitted). Throws CannotMeasure when no tone
-// stands out (silence) or the recording is clipped; UsageError when it is too short or the rate unfit.
+// frequency, a level that is not steady (which the uncertainty counts), distortion above 1 %, off-frequency
+// clocks (up to 500 ppm; the frequency is then fitted). Another tone is refused, naming its frequency. Throws
+// CannotMeasure when no tone stands out (silence) or the recording is clipped; UsageError when it is too
+// short or the rate unfit.
 Findings gain(const GainQuestion& question);
 
 }  // namespace coldpin::measure

@@ -23,7 +23,8 @@ struct HumQuestion {
 // Figures: mains_frequency (Hz, mean over the recording), hum_output (RMS sum of all mains harmonics in the
 // band), hum_harmonic with conditions.harmonic for each one that stands out, hum_to_noise (dB: power of the
 // harmonics over the unweighted noise power in the band without them); with a gain hum_input_referred.
-// No hum found: hum_output as at_most, no mains_frequency, a caution. Throws CannotMeasure for silence.
+// No hum found in the band: hum_output and hum_to_noise as at_most, a caution (mains_frequency only if hum
+// stands out elsewhere). Throws CannotMeasure for silence.
 Findings hum(const HumQuestion& question);
 
 }  // namespace coldpin::measure

@@ -30,7 +30,10 @@ struct NoiseQuestion {
 // its uncertainty; when it leaves less than 3 dB the figure is a bound (at_most). Throws CannotMeasure for
 // silence and for an input-referred level below the thermal noise of the stated source beyond its
 // uncertainty (naming the likely cause: level reference, gain or termination); UsageError for less than
-// 0.25 s or a band outside (0, rate/2).
+// 0.25 s, a band outside (0, rate/2), or a source or temperature that cannot be. The uncertainty is that of
+// the device's own level: it counts the finite time, and what parts of the recording differ by when that is
+// more than chance (a caution says so). Hum and tones in the band are included, with a caution when they
+// carry most of it.
 Findings noise(const NoiseQuestion& question);
 
 }  // namespace coldpin::measure
