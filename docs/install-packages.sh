@@ -7,7 +7,7 @@ set -euo pipefail
 build_packages=(g++ cmake ninja-build pkg-config
   portaudio19-dev libfftw3-dev libsndfile1-dev libfmt-dev libcli11-dev libtomlplusplus-dev nlohmann-json3-dev
   libeigen3-dev libboost-dev)
-test_packages=(libgtest-dev libgmock-dev git clang clang-format clang-tidy
+test_packages=(libgtest-dev libgmock-dev libbenchmark-dev git clang clang-format clang-tidy
   jackd2 libjack-jackd2-dev util-linux procps python3 python3-numpy python3-scipy)
 
 case "${1:-}" in

@@ -7,12 +7,13 @@
 #include <utility>
 #include <vector>
 
-#include <Eigen/Dense>
 #include <fmt/core.h>
 
 #include "coldpin/spectrum/fft.h"
 #include "coldpin/spectrum/tone_extent.h"
 #include "coldpin/spectrum/window.h"
+
+#include "low_sweep_slips.h"
 
 namespace coldpin::rig {
 
@@ -289,52 +290,6 @@ double check_unrolled(const Unrolled& unrolled, ContentReport& report) {
     return tightest;
 }
 
-// At low frequencies a filter's group delay changes by many frames from block to block, but as a smooth
-// function of frequency: constant, 1/f^2, 1/f^4 and 1/f^6 hold any ordinary high-pass. A loss adds a constant
-// from some block on. For each place the least-squares fit with that step is compared with the one without.
-void check_low_end(const Unrolled& unrolled, ContentReport& report) {
-    constexpr double least_frames = 3.0;
-    constexpr double residual_ratio = 0.35;  // what a mere misfit of the smooth part never reaches
-    const auto count = static_cast<Eigen::Index>(unrolled.turns_rad.size());
-    if (count < 14) return;
-    const double reference_hz = unrolled.hz.back();
-    Eigen::MatrixXd smooth(count, 4);
-    Eigen::VectorXd turns(count);
-    for (Eigen::Index k = 0; k < count; ++k) {
-        const auto i = static_cast<std::size_t>(k);
-        const double inverse = std::pow(reference_hz / unrolled.hz[i], 2);
-        double term = unrolled.step_hz[i];
-        for (Eigen::Index c = 0; c < 4; ++c, term *= inverse) smooth(k, c) = term;
-        turns(k) = unrolled.turns_rad[i];
-    }
-    const double without = (turns - smooth * smooth.colPivHouseholderQr().solve(turns)).squaredNorm();
-    double best = without, frames = 0.0;
-    Eigen::Index place = 0;
-    for (Eigen::Index at = 6; at + 6 < count; ++at) {
-        // The two differences around the loss hold its jump, wrapped: they are left out.
-        Eigen::MatrixXd stepped(count, 5);
-        stepped << smooth, Eigen::VectorXd::Zero(count);
-        for (Eigen::Index k = at; k < count; ++k)
-            stepped(k, 4) = unrolled.step_hz[static_cast<std::size_t>(k)];
-        Eigen::VectorXd seen = turns;
-        stepped.middleRows(at - 1, 2).setZero();
-        seen.segment(at - 1, 2).setZero();
-        const Eigen::VectorXd fit = stepped.colPivHouseholderQr().solve(seen);
-        const double left = (seen - stepped * fit).squaredNorm();
-        if (left < best) {
-            best = left;
-            place = at;
-            frames = std::abs(fit(4)) / two_pi * unrolled.rate_hz;
-        }
-    }
-    if (frames < least_frames || std::sqrt(best / without) > residual_ratio) return;
-    report.glitches.push_back(
-        {fmt::format(
-             "the delay steps by about {:.0f} frame(s) within the sweep: frames were lost or repeated",
-             frames),
-         unrolled.frames[static_cast<std::size_t>(place)]});
-}
-
 void check_sweep(std::span<const double> channel, double rate_hz, const signal::Stimulus& stimulus,
                  std::optional<double> expected, ContentReport& report) {
     const auto sent = signal::render(stimulus);
@@ -345,8 +300,13 @@ void check_sweep(std::span<const double> channel, double rate_hz, const signal::
     const auto block = std::max<std::size_t>(256, sent.size() / 400);
     const double tightest =
         check_unrolled(unroll(channel, rate_hz, stimulus, lag.frames, block, 1000.0, rate_hz), report);
-    if (report.whole())
-        check_low_end(unroll(channel, rate_hz, stimulus, lag.frames, 5 * block, 45.0, 1300.0), report);
+    if (!report.whole()) return;
+    const LowSweepReport low = find_low_slip(channel, rate_hz, stimulus, lag.frames);
+    if (low.slip)
+        report.glitches.push_back(
+            {fmt::format("the sweep's phase jumps by about {:.1f} frame(s): frames were lost or repeated",
+                         std::abs(low.slip->frames)),
+             low.slip->frame});
     report.proven = report.whole() && tightest * sure < 3.5;
 }
 

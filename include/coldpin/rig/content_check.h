@@ -23,12 +23,11 @@ struct ContentReport {
     bool whole() const noexcept { return glitches.empty(); }
 };
 
-// Checks one channel against what was played: exact zeros on a live input (8 or more in a row, or all),
-// repeated blocks, and for tones, multitones and sweeps a delay that stays constant through the capture
-// (a change of one frame and more is found when the stimulus stands 20 dB out of the noise in its own band;
-// where it does not, proven = false). Low in a sweep less is
-// found: below 1 kHz from a few frames on, below 150 Hz from some tens. `expected_delay_frames` narrows the
-// search when known.
+// Checks one channel against what was played: exact zeros on a live input (5 or more in a row, or all),
+// repeated blocks, and for tones, multitones and sweeps a delay that stays constant through the capture. A
+// change of one frame and more is found when the stimulus stands 20 dB out of the noise in its own band;
+// where it does not, proven = false. Low in a sweep one frame is found from about 65 Hz up, seven from 30 Hz
+// up (below, they move no figure). `expected_delay_frames` narrows the search when known.
 ContentReport check_content(std::span<const double> channel, double rate_hz, const signal::Stimulus& stimulus,
                             std::optional<double> expected_delay_frames = std::nullopt);
 
