@@ -66,6 +66,14 @@ void read_calibration(TableReader& table, rig::Setup& setup) {
     calibration.reference_full_scale_dbu = table.number("reference_full_scale_dbu", levels_dbu);
     calibration.time_utc = table.text("time_utc").value_or("");
     calibration.remark = table.text("remark").value_or("");
+    calibration.knobs = table.text("knobs").value_or("");
+    calibration.meter = table.text("meter").value_or("");
+    calibration.loop_latency_frames = table.number("loop_latency_frames", {-1e6, 1e6});
+    calibration.loop_noise_dbfs = table.number("loop_noise_dbfs", {-300.0, 20.0});
+    calibration.loop_distortion_db = table.number("loop_distortion_db", {-300.0, 20.0});
+    calibration.loop_deviation_db = table.number("loop_deviation_db", {0.0, 200.0});
+    calibration.loop_crosstalk_db = table.number("loop_crosstalk_db", {-300.0, 40.0});
+    calibration.loop_dc = table.number("loop_dc", {-1.0, 1.0});
     setup.calibration = calibration;
 }
 
@@ -123,6 +131,7 @@ void read_fixtures(TableReader& top, rig::Setup& setup) {
         top.fail("fixture", "'" + shown(*wanted) + "'", "the name of a [fixtures.NAME]: " + listed(known),
                  did_you_mean(*wanted, known));
     setup.fixture = fixtures[static_cast<std::size_t>(chosen - names.begin())];
+    setup.fixture_key = *chosen;
 }
 
 }  // namespace

@@ -55,7 +55,17 @@ struct Calibration {
     double input_uncertainty_db = 0.0;
     std::optional<double> reference_full_scale_dbu;
     std::string time_utc;  // ISO 8601
-    std::string remark;    // knobs, meter, who
+    std::string remark;    // who, and whatever else
+    std::string knobs{};   // where the interface's controls stood, in the user's words
+    std::string meter{};   // which meter, its range and accuracy
+
+    // What the loop from output to input was like then; absent where it was not measured.
+    std::optional<double> loop_latency_frames{};
+    std::optional<double> loop_noise_dbfs{};     // RMS, 20 Hz to 20 kHz, input on the silent output
+    std::optional<double> loop_distortion_db{};  // harmonics 2 to 5 of 997 Hz at -3 dBFS, re the fundamental
+    std::optional<double> loop_deviation_db{};   // largest from flat, 20 Hz to 20 kHz
+    std::optional<double> loop_crosstalk_db{};   // of the other inputs, worst
+    std::optional<double> loop_dc{};             // of the device's input, full scale = 1
 };
 
 // The pretended interface.
@@ -118,6 +128,7 @@ struct Setup {
     AudioSetup audio;
     Routing routing;
     Fixture fixture;
+    std::string fixture_key = "head";  // its NAME in [fixtures.NAME]
     Limits limits;
     std::optional<Calibration> calibration;  // absent: nothing in volts can be measured
     SimulatedSetup simulated;
