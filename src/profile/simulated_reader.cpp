@@ -1,5 +1,7 @@
 #include "simulated_reader.h"
 
+#include <utility>
+
 namespace coldpin::profile {
 
 namespace {
@@ -43,6 +45,7 @@ rig::SimulatedInterface read_simulated_interface(TableReader& table) {
     rig::SimulatedInterface interface;
     take(table, "output_full_scale_dbu", interface.output_full_scale_dbu, {-40.0, 40.0});
     take(table, "input_full_scale_dbu", interface.input_full_scale_dbu, {-60.0, 40.0});
+    interface.reference_full_scale_dbu = table.number("reference_full_scale_dbu", {-60.0, 40.0});
     take(table, "input_noise_dbfs", interface.input_noise_dbfs, {-200.0, 0.0});
     take(table, "output_noise_dbfs", interface.output_noise_dbfs, {-200.0, 0.0});
     take(table, "latency_frames", interface.latency_frames, {0.0, 20000.0});
@@ -61,9 +64,37 @@ rig::SimulatedFaults read_simulated_faults(TableReader& table) {
     faults.lose_frames_in_takes = table.whole_numbers("lose_frames_in_takes", 1, 1000000);
     faults.repeat_frames_in_takes = table.whole_numbers("repeat_frames_in_takes", 1, 1000000);
     faults.zero_frames_in_takes = table.whole_numbers("zero_frames_in_takes", 1, 1000000);
-    faults.unplugged = table.flag("unplugged").value_or(false);
-    faults.cold_leg_open = table.flag("cold_leg_open").value_or(false);
-    faults.legs_swapped = table.flag("legs_swapped").value_or(false);
+    faults.lost_frames = table.whole("lost_frames", 1, 100000).value_or(faults.lost_frames);
+    faults.resample_to_hz = table.number("resample_to_hz", {4000.0, 768000.0});
+    faults.resampler_half_width =
+        table.whole("resampler_half_width", 2, 256).value_or(faults.resampler_half_width);
+    faults.limiter_dbfs = table.number("limiter_dbfs", {-120.0, 0.0});
+    take(table, "limiter_ratio", faults.limiter_ratio, {1.0, 1000.0});
+    take(table, "limiter_attack_s", faults.limiter_attack_s, {1e-5, 10.0});
+    take(table, "limiter_release_s", faults.limiter_release_s, {1e-5, 10.0});
+    take(table, "bass_boost_db", faults.bass_boost_db, {-40.0, 40.0});
+    take(table, "monitor_mix", faults.monitor_mix, {0.0, 0.9});
+    take(table, "monitor_delay_frames", faults.monitor_delay_frames, {0.0, 20000.0});
+    faults.dead_output = table.whole("dead_output", 1, 128);
+    faults.dead_input = table.whole("dead_input", 1, 128);
+    take(table, "output_moved_db", faults.output_moved_db, {-100.0, 100.0});
+    take(table, "clock_ppm", faults.clock_ppm, {-1000.0, 1000.0});
+    take(table, "clock_drift_ppm_per_s", faults.clock_drift_ppm_per_s, {-1000.0, 1000.0});
+    take(table, "pad_error_db", faults.pad_error_db, {-100.0, 100.0});
+    take(table, "gain_error_db", faults.gain_error_db, {-100.0, 100.0});
+    for (const auto& [key, member] : {std::pair{"mono_outputs", &rig::SimulatedFaults::mono_outputs},
+                                      {"mono_inputs", &rig::SimulatedFaults::mono_inputs},
+                                      {"outputs_swapped", &rig::SimulatedFaults::outputs_swapped},
+                                      {"inputs_swapped", &rig::SimulatedFaults::inputs_swapped},
+                                      {"unplugged", &rig::SimulatedFaults::unplugged},
+                                      {"unit_off", &rig::SimulatedFaults::unit_off},
+                                      {"feed_not_reaching", &rig::SimulatedFaults::feed_not_reaching},
+                                      {"output_not_connected", &rig::SimulatedFaults::output_not_connected},
+                                      {"output_in_reference", &rig::SimulatedFaults::output_in_reference},
+                                      {"common_mode_dead", &rig::SimulatedFaults::common_mode_dead},
+                                      {"cold_leg_open", &rig::SimulatedFaults::cold_leg_open},
+                                      {"legs_swapped", &rig::SimulatedFaults::legs_swapped}})
+        faults.*member = table.flag(key).value_or(false);
     return faults;
 }
 

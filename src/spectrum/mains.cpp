@@ -6,13 +6,13 @@
 
 #include "coldpin/spectrum/averaged_spectrum.h"
 #include "coldpin/spectrum/fft.h"
+#include "coldpin/spectrum/phasor_sum.h"
 #include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/spectrum/window.h"
 #include "coldpin/units/error.h"
 
 #include "mains_lines.h"
 #include "mains_track.h"
-#include "phasor_sum.h"
 
 namespace coldpin::spectrum {
 

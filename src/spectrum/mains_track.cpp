@@ -6,9 +6,8 @@
 
 #include <Eigen/Dense>
 
+#include "coldpin/spectrum/phasor_sum.h"
 #include "coldpin/spectrum/window.h"
-
-#include "phasor_sum.h"
 
 namespace coldpin::spectrum {
 

@@ -1,4 +1,4 @@
-#include "phasor_sum.h"
+#include "coldpin/spectrum/phasor_sum.h"
 
 #include <algorithm>
 #include <array>

@@ -8,9 +8,8 @@
 #include <fmt/core.h>
 
 #include "coldpin/spectrum/averaged_spectrum.h"
+#include "coldpin/spectrum/phasor_sum.h"
 #include "coldpin/units/error.h"
-
-#include "phasor_sum.h"
 
 namespace coldpin::spectrum {
 

@@ -8,10 +8,9 @@
 
 #include <fmt/core.h>
 
+#include "coldpin/spectrum/phasor_sum.h"
 #include "coldpin/spectrum/window.h"
 #include "coldpin/units/error.h"
-
-#include "phasor_sum.h"
 
 namespace coldpin::spectrum {
 

@@ -1,5 +1,6 @@
 #include "coldpin/units/preferred_values.h"
 
+#include <algorithm>
 #include <cmath>
 
 #include <gtest/gtest.h>
@@ -24,8 +25,12 @@ TEST(PreferredValuesTest, E96IsTheStandardsTable) {
 
 TEST(PreferredValuesTest, TheNearestIsFoundInEveryDecade) {
     for (auto series : {PreferredSeries::e24, PreferredSeries::e96}) {
-        // Half the widest gap: from 1.3 to 1.5, and from 1.02 to 1.05.
-        const double widest = 0.5 * std::log(series == PreferredSeries::e24 ? 1.5 / 1.3 : 1.05 / 1.02) + 1e-9;
+        double widest = 0.0;  // half the widest gap
+        const auto decade = preferred_decade(series);
+        for (std::size_t k = 0; k < decade.size(); ++k) {
+            const double next = k + 1 < decade.size() ? decade[k + 1] : 10.0;
+            widest = std::max(widest, 0.5 * std::log(next / decade[k]) + 1e-9);
+        }
         for (double wanted = 0.0317; wanted < 4e7; wanted *= 1.0137) {
             const double found = preferred_value(series, wanted);
             EXPECT_LT(std::abs(std::log(found / wanted)), widest) << wanted;

@@ -19,7 +19,13 @@ std::string feed_name(Feed feed);  // "differential", "common-mode", "idle"
 std::optional<Feed> feed_from_name(const std::string& name);
 
 // Everything a hand would have to change: which plug sits where, how the unit stands.
-enum class Plug { differential_pad, common_mode_feed, both };
+enum class Plug {
+    differential_pad,
+    common_mode_feed,
+    both,
+    loop_differential,  // the differential output straight into the device's input
+    loop_common_mode,   // the common-mode output straight into the device's input
+};
 struct Wiring {
     Plug plug = Plug::both;    // `both` when the rig has an output for each
     std::string setting;       // of the gain control; empty when there is only one

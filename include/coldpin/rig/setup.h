@@ -72,11 +72,12 @@ struct Calibration {
 struct SimulatedInterface {
     double output_full_scale_dbu = 18.0;
     double input_full_scale_dbu = 18.0;
-    double input_noise_dbfs = -104.0;    // RMS, 20 Hz to 20 kHz
-    double output_noise_dbfs = -106.0;   // RMS, 20 Hz to 20 kHz, while playing or idle
-    double latency_frames = 391.37;      // round trip, fractional
-    double ac_corner_hz = 1.0;           // of output and input together, first order
-    double second_harmonic_db = -104.0;  // at full scale, of the loop
+    std::optional<double> reference_full_scale_dbu = {};  // absent: as the calibration says
+    double input_noise_dbfs = -104.0;                     // RMS, 20 Hz to 20 kHz
+    double output_noise_dbfs = -106.0;                    // RMS, 20 Hz to 20 kHz, while playing or idle
+    double latency_frames = 391.37;                       // round trip, fractional
+    double ac_corner_hz = 1.0;                            // of output and input together, first order
+    double second_harmonic_db = -104.0;                   // at full scale, of the loop
     double third_harmonic_db = -108.0;
     double leakage_db = -112.0;            // output to input inside the interface, flat
     double ground_loop_hum_dbfs = -112.0;  // fundamental's RMS at the input, through its ground loop
@@ -105,14 +106,44 @@ struct SimulatedPreamp {
     double second_channel_gain_offset_db = 0.03;
 };
 
-// What goes wrong in the pretended path, to be found by content alone.
+// What goes wrong in the pretended path and at the pretended bench, to be found by content alone.
 struct SimulatedFaults {
-    std::vector<int> lose_frames_in_takes;    // numbers (from 1) of takes that lose 7 frames in mid-stimulus
+    std::vector<int> lose_frames_in_takes;    // numbers (from 1) of takes that lose frames in mid-stimulus
+    int lost_frames = 7;                      // so many
     std::vector<int> repeat_frames_in_takes;  // that repeat 32 frames
     std::vector<int> zero_frames_in_takes;    // that hold 40 frames of exact zeros
-    bool unplugged = false;                   // exact zeros everywhere
+
+    // The operating system and the interface's own mixer.
+    std::optional<double> resample_to_hz;  // the path really runs at this rate
+    int resampler_half_width = 16;         // zero crossings of its sinc: few make images
+    std::optional<double> limiter_dbfs;    // of the inputs: from here on
+    double limiter_ratio = 3.0;
+    double limiter_attack_s = 0.005;
+    double limiter_release_s = 0.1;
+    double bass_boost_db = 0.0;  // an "enhancement": shelf below 200 Hz
+    double monitor_mix = 0.0;    // share of the device's input heard in the outputs
+    double monitor_delay_frames = 64.0;
+    bool mono_outputs = false;
+    bool mono_inputs = false;
+    bool outputs_swapped = false;
+    bool inputs_swapped = false;
+    std::optional<int> dead_output;
+    std::optional<int> dead_input;
+    double output_moved_db = 0.0;  // the output's knob stands so much higher than the interface's figures say
+    double clock_ppm = 0.0;        // the input's clock is faster by so much
+    double clock_drift_ppm_per_s = 0.0;
+
+    // The bench.
+    bool unplugged = false;  // exact zeros everywhere
+    bool unit_off = false;
+    bool feed_not_reaching = false;  // nothing arrives at the preamp's input
+    bool output_not_connected = false;
+    bool output_in_reference = false;  // the unit's output plug sits in the reference input
+    bool common_mode_dead = false;
     bool cold_leg_open = false;
     bool legs_swapped = false;
+    double pad_error_db = 0.0;   // the pad loses that much more than the rig file says
+    double gain_error_db = 0.0;  // the gain control stands so much higher
 };
 
 struct SimulatedSetup {
