@@ -55,7 +55,9 @@ TEST(PerformTest, AHealthyUnitPassesWithTheTruthInsideEveryUncertainty) {
     const check::Run run = run_on(profile::read_rig("simulated"), device, bench);
     EXPECT_EQ(run.verdict, Verdict::pass);
     EXPECT_TRUE(bench.asked.empty());
+#ifndef COLDPIN_SANITIZED  // instrumented code takes its time
     EXPECT_LT(run.wall_time_s, 3.0);
+#endif
     for (const auto& step : run.steps) {
         EXPECT_EQ(step.failure, "");
         if (const auto* gain = step.findings.figure("gain")) {
