@@ -55,6 +55,7 @@ int run(int argc, char** argv) {
     add_capture(program, action);
     add_stimulus(program, action);
     add_devices(program, action);
+    add_calibrate(program, action);
     add_fixture(program, action);
     add_report(program, action);
 

@@ -30,15 +30,26 @@ void TerminalBench::ask(const std::string& instruction) {
             instruction));
     fmt::print(stderr, "\n  {}\n  Then press Enter (Ctrl-C to give up): ", instruction);
     std::fflush(stderr);
-    int c = 0;
-    do {
-        c = std::getchar();
-    } while (c != '\n' && c != EOF);
-    if (c == EOF) {
-        if (stop_flag()->load()) throw CannotMeasure("interrupted: nothing was kept, the outputs are silent");
+    read_line(instruction);
+}
+
+std::string TerminalBench::answer(const std::string& question) {
+    clear_progress();
+    if (yes_)
         throw UsageError(
-            fmt::format("nobody answered (standard input has ended) when asked: \"{}\"", instruction));
-    }
+            fmt::format("--yes says that nobody is asked, but this needs an answer: \"{}\"", question));
+    fmt::print(stderr, "\n  {}\n  > ", question);
+    std::fflush(stderr);
+    return read_line(question);
+}
+
+std::string TerminalBench::read_line(const std::string& asked) {
+    std::string line;
+    int c = 0;
+    while ((c = std::getchar()) != '\n' && c != EOF) line += static_cast<char>(c);
+    if (c != EOF || !line.empty()) return line;
+    if (stop_flag()->load()) throw CannotMeasure("interrupted: nothing was kept, the outputs are silent");
+    throw UsageError(fmt::format("nobody answered (standard input has ended) when asked: \"{}\"", asked));
 }
 
 void TerminalBench::progress(const std::string& what, std::size_t step, std::size_t steps) {

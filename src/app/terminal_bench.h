@@ -1,6 +1,8 @@
 // The person at the bench, reached through the terminal.
 #pragma once
 
+#include <string>
+
 #include "coldpin/check/perform.h"
 
 namespace coldpin::app {
@@ -13,10 +15,12 @@ class TerminalBench : public check::Bench {
     TerminalBench(const TerminalBench&) = delete;
     TerminalBench& operator=(const TerminalBench&) = delete;
     void ask(const std::string& instruction) override;
+    std::string answer(const std::string& question) override;
     void progress(const std::string& what, std::size_t step, std::size_t steps) override;
 
   private:
     void clear_progress();
+    std::string read_line(const std::string& asked);
     bool yes_;
     bool progress_shown_ = false;
 };

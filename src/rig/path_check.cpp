@@ -58,9 +58,9 @@ class PathLook {
         if (!find_sweep()) return report_;
         unroll();
         look_at_delays();
+        look_for_echo();
         look_at_levels();
         look_at_response();
-        look_for_echo();
         look_for_images();
         look_at_polarity();
         return report_;
@@ -365,7 +365,9 @@ class PathLook {
             most = std::max(most, std::abs(levels[k] - levels[2]));
             course = std::max(course, std::abs(late[k] - early[k]));
         }
-        if (report_.finding(PathFault::frames_lost) == nullptr && (most > limit || course > 2.0 * limit))
+        // An echo of the loud step stands in the quiet one after it.
+        if (report_.finding(PathFault::frames_lost) == nullptr &&
+            report_.finding(PathFault::echo) == nullptr && (most > limit || course > 2.0 * limit))
             add(PathFault::level_dependent,
                 fmt::format(
                     "The gain of the path depends on the level: {:.2f} dB between tones 20 dB apart{}. An "

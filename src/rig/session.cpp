@@ -222,4 +222,78 @@ Capture Session::capture(const CaptureRequest& request) {
     }
 }
 
+signal::Recording Session::play_raw(int output, std::span<const double> samples, int inputs) {
+    if (!wiring_) throw UsageError("play: the wiring was not prepared");
+    const auto& routing = setup_.routing;
+    TakeRequest request;
+    request.rate_hz = setup_.audio.sample_rate_hz;
+    request.label = "path";
+    request.feed = Feed::differential;
+    request.input_channels = inputs;
+    request.play.assign(static_cast<std::size_t>(std::max(
+                            {output, routing.differential_output, routing.common_mode_output.value_or(0)})),
+                        std::vector<float>(samples.size(), 0.0F));
+    auto& channel = request.play[static_cast<std::size_t>(output) - 1];
+    for (std::size_t n = 0; n < samples.size(); ++n) {
+        if (!(std::abs(samples[n]) <= 1.0)) throw UsageError("play: a sample lies beyond full scale");
+        channel[n] = static_cast<float>(samples[n]);
+    }
+    const Take take = backend_->play_and_record(request, stop_);
+    signal::Recording recording;
+    recording.rate_hz = request.rate_hz;
+    for (const auto& one : take.recorded) recording.channels.push_back(as_double(one, 0));
+    return recording;
+}
+
+void Session::play_tone_until(const std::atomic<bool>& stop, int output, double frequency_hz,
+                              double level_dbfs) {
+    const bool keeps_time = setup_.audio.backend == BackendKind::portaudio || setup_.simulated.real_time;
+    constexpr double round_s = 30.0, glance_s = 0.2;
+    signal::Stimulus tone;
+    tone.kind = signal::Tone{frequency_hz};
+    tone.length_s = keeps_time ? round_s : glance_s;
+    tone.level_dbfs = level_dbfs;
+    tone.rate_hz = setup_.audio.sample_rate_hz;
+    const auto samples = signal::render(tone);
+    TakeRequest request;
+    request.rate_hz = tone.rate_hz;
+    request.label = "tone";
+    request.feed = Feed::differential;
+    request.play.assign(static_cast<std::size_t>(std::max(output, setup_.routing.differential_output)),
+                        std::vector<float>(samples.size(), 0.0F));
+    request.play[static_cast<std::size_t>(output) - 1].assign(samples.begin(), samples.end());
+    do {
+        try {
+            backend_->play_and_record(request, &stop);
+        } catch (const CannotMeasure&) {
+            if (!stop.load()) throw;
+        }
+    } while (keeps_time && !stop.load());
+}
+
+PathReport Session::check_path(double level_dbfs) {
+    if (!wiring_) throw UsageError("path check: the wiring was not prepared");
+    const auto& routing = setup_.routing;
+    const bool loop = wiring_->plug == Plug::loop_differential || wiring_->plug == Plug::loop_common_mode;
+    if (!loop && !routing.reference_input)
+        throw UsageError("path check: the rig has no reference input, so only a loop can be checked");
+    const int input = loop ? routing.device_inputs.front() : *routing.reference_input;
+    const int output = wiring_->plug == Plug::loop_common_mode && routing.common_mode_output
+                           ? *routing.common_mode_output
+                           : routing.differential_output;
+    const double rate = setup_.audio.sample_rate_hz;
+    auto probe = render_path_probe(rate, level_dbfs);
+    constexpr double before_s = 0.02, after_s = 0.15;
+    probe.insert(probe.begin(), static_cast<std::size_t>(before_s * rate), 0.0);
+    probe.resize(probe.size() + static_cast<std::size_t>(after_s * rate), 0.0);
+    const auto heard = play_raw(output, probe, input);
+    PathExpectation expectation;
+    if (!loop && setup_.calibration && setup_.calibration->reference_full_scale_dbu) {
+        expectation.gain_db =
+            setup_.calibration->output_full_scale_dbu - *setup_.calibration->reference_full_scale_dbu;
+        expectation.deviation_db = setup_.calibration->loop_deviation_db;
+    }
+    return rig::check_path(heard.channel(input), rate, level_dbfs, expectation);
+}
+
 }  // namespace coldpin::rig

@@ -17,6 +17,8 @@ class Bench {
     // Asks for a change at the bench ("Move the plug from ... to ..."); returns when done, throws UsageError
     // when nobody can answer.
     virtual void ask(const std::string& instruction) = 0;
+    // Asks for something to be typed; returns it as typed. The default has nobody to type: UsageError.
+    virtual std::string answer(const std::string& question);
     // What happens now, and how far: step of steps.
     virtual void progress(const std::string& what, std::size_t step, std::size_t steps) = 0;
 };

@@ -5,10 +5,12 @@
 #include <functional>
 #include <memory>
 #include <optional>
+#include <span>
 #include <string>
 
 #include "coldpin/rig/backend.h"
 #include "coldpin/rig/content_check.h"
+#include "coldpin/rig/path_check.h"
 #include "coldpin/rig/setup.h"
 #include "coldpin/signal/description.h"
 #include "coldpin/signal/recording.h"
@@ -67,6 +69,20 @@ class Session {
     // Plays and records, checks the content, takes a damaged capture again up to three times, then throws
     // CannotMeasure with the reason. Clipping at the converter also throws, saying what to turn down.
     Capture capture(const CaptureRequest& request);
+
+    // Samples as they are on one output, every other one silent; what each input channel from 1 to `inputs`
+    // heard, from the first frame on. For calibrating and path checks: no volts, no ramps, no retakes. Throws
+    // UsageError for samples beyond full scale or wiring that was not prepared.
+    signal::Recording play_raw(int output, std::span<const double> samples, int inputs);
+
+    // A tone that goes on until `stop`, for a meter. Returns at once on a simulated rig that does not keep
+    // time.
+    void play_tone_until(const std::atomic<bool>& stop, int output, double frequency_hz, double level_dbfs);
+
+    // The path probe on the differential output at that converter level, heard by the reference input (or, in
+    // a loop, by the device's input). Within a second. Throws UsageError without a reference input outside a
+    // loop.
+    PathReport check_path(double level_dbfs);
 
     // Throws UsageError when the request would exceed a limit of the rig or cannot be reached by its
     // converter. capture() asks this first; a plan asks it for everything before anything is played.
