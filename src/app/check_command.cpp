@@ -72,6 +72,11 @@ void add_check(CLI::App& program, Action& action) {
     command->add_option("--runs", words->runs, "folder for run folders")
         ->capture_default_str()
         ->type_name("FOLDER");
+    command->add_flag_function(
+        "--no-preflight", [words](std::int64_t) { words->details.preflight = false; },
+        "do not look at wiring and path first (two seconds)");
+    command->add_flag("--accept-path", words->details.accept_path,
+                      "measure although the path is not honest; the sheet says so");
     command->add_flag("--yes", words->yes,
                       "ask nothing: everything is connected and set as the profile says");
     command->add_flag("--json", words->json, "run.json on standard output and nothing else");

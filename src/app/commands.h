@@ -17,6 +17,7 @@ void add_measure(CLI::App& program, Action& action);
 void add_check(CLI::App& program, Action& action);
 void add_analyse(CLI::App& program, Action& action);
 void add_calibrate(CLI::App& program, Action& action);
+void add_hum_search(CLI::App& program, Action& action);
 void add_fixture(CLI::App& program, Action& action);
 void add_report(CLI::App& program, Action& action);
 

@@ -56,6 +56,7 @@ int run(int argc, char** argv) {
     add_stimulus(program, action);
     add_devices(program, action);
     add_calibrate(program, action);
+    add_hum_search(program, action);
     add_fixture(program, action);
     add_report(program, action);
 

@@ -28,6 +28,8 @@ struct Words {
     check::SingleMeasurement wanted;
     bool yes = false;
     bool json = false;
+    bool preflight = true;
+    bool accept_path = false;
 };
 
 int measure_once(const Words& words) {
@@ -43,11 +45,15 @@ int measure_once(const Words& words) {
         check::RunDetails details;
         details.tool_version = tool_version;
         details.time_utc = utc_now();
+        details.preflight = words.preflight;
+        details.accept_path = words.accept_path;
         run = check::perform(plan, rig, session, bench, details);
     }
-    for (const auto& step : run.steps) {
+    for (auto& step : run.steps) {
         if (step.measure != words.wanted.kind) continue;
         if (!step.failure.empty()) throw CannotMeasure(step.failure);
+        step.findings.cautions.insert(step.findings.cautions.begin(), run.cautions.begin(),
+                                      run.cautions.end());
         print(words.json ? measure::to_json(step.findings).dump(2) + "\n"
                          : report::findings_text(step.findings, {colour_wanted(), terminal_width()}));
     }
@@ -86,6 +92,11 @@ void add_measure(CLI::App& program, Action& action) {
     command->add_option("--seconds", wanted.length_s, "length of the stimulus")->type_name("T");
     command->add_option("--source-ohms", wanted.source_ohms, "resistance across the input")->type_name("R");
     command->add_option("--mains", wanted.mains_hz, "mains frequency to look near")->type_name("F");
+    command->add_flag_function(
+        "--no-preflight", [words](std::int64_t) { words->preflight = false; },
+        "do not look at wiring and path first (two seconds)");
+    command->add_flag("--accept-path", words->accept_path,
+                      "measure although the path is not honest; a caution says so");
     command->add_flag("--yes", words->yes, "ask nothing");
     command->add_flag("--json", words->json, "one JSON document on standard output and nothing else");
     command->footer(

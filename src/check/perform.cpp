@@ -7,6 +7,7 @@
 
 #include <fmt/core.h>
 
+#include "coldpin/check/preflight.h"
 #include "coldpin/profile/quantities.h"
 #include "coldpin/units/error.h"
 
@@ -116,6 +117,35 @@ rig::Capture capture_within_range(rig::CaptureRequest& request, rig::Session& se
     }
 }
 
+// For the probe: the level of the first capture, within every limit of the rig.
+double loudest_drive_dbu(const rig::CaptureRequest& first, const rig::Setup& setup) {
+    double drive = first.feed == rig::Feed::differential ? first.drive_dbu : -60.0;
+    if (setup.limits.max_preamp_input_dbu) drive = std::min(drive, *setup.limits.max_preamp_input_dbu);
+    return drive;
+}
+
+// Wiring first: a plug in the wrong socket would pass for a knob that moved.
+void look_ahead(const profile::DeviceProfile& profile, rig::Session& session,
+                const rig::CaptureRequest& first, const RunDetails& details,
+                std::vector<std::string>& cautions) {
+    const rig::Setup& setup = session.setup();
+    if (setup.audio.backend == rig::BackendKind::stored || first.wiring.plug == rig::Plug::common_mode_feed)
+        return;
+    for (const auto& finding :
+         preflight(session, profile, first.wiring.setting, first.device_input).findings) {
+        if (finding.spoils) throw CannotMeasure(finding.sentence);
+        cautions.push_back(finding.sentence);
+    }
+    if (!setup.routing.reference_input) return;
+    // As loud as the run itself, so that what happens at its level is seen.
+    const double level_dbfs = std::min(
+        -3.0, session.converter_level_dbfs(rig::Feed::differential, loudest_drive_dbu(first, setup)));
+    for (const auto& finding : session.check_path(level_dbfs).findings) {
+        if (finding.spoils && !details.accept_path) throw CannotMeasure(finding.sentence);
+        cautions.push_back(finding.sentence);
+    }
+}
+
 }  // namespace
 
 std::string Bench::answer(const std::string& question) {
@@ -148,6 +178,13 @@ Run perform(const profile::DeviceProfile& profile, const profile::RigFile& rig, 
 
     std::map<Place, measure::Figure> gains;
     std::optional<rig::Wiring> wiring;
+    if (details.preflight && !plan.captures.empty()) {
+        const rig::CaptureRequest& first = plan.captures.front().request;
+        bench.progress("wiring and path", 0, plan.captures.size());
+        bring_about(first.wiring, wiring, session, bench);
+        wiring = first.wiring;
+        look_ahead(profile, session, first, details, run.cautions);
+    }
     for (std::size_t i = 0; i < plan.captures.size(); ++i) {
         rig::CaptureRequest& request = plan.captures[i].request;
         bench.progress(request.label, i, plan.captures.size());

@@ -53,6 +53,7 @@ rig::SimulatedInterface read_simulated_interface(TableReader& table) {
     take(table, "second_harmonic_db", interface.second_harmonic_db, {-200.0, -20.0});
     take(table, "third_harmonic_db", interface.third_harmonic_db, {-200.0, -20.0});
     take(table, "leakage_db", interface.leakage_db, {-300.0, 0.0});
+    take(table, "own_hum_dbfs", interface.own_hum_dbfs, {-300.0, 0.0});
     take(table, "ground_loop_hum_dbfs", interface.ground_loop_hum_dbfs, {-300.0, 0.0});
     take(table, "mains_hz", interface.mains_hz, {10.0, 500.0});
     take(table, "mains_drift_hz_per_s", interface.mains_drift_hz_per_s, {-1.0, 1.0});
@@ -80,6 +81,7 @@ rig::SimulatedFaults read_simulated_faults(TableReader& table) {
     take(table, "output_moved_db", faults.output_moved_db, {-100.0, 100.0});
     take(table, "clock_ppm", faults.clock_ppm, {-1000.0, 1000.0});
     take(table, "clock_drift_ppm_per_s", faults.clock_drift_ppm_per_s, {-1000.0, 1000.0});
+    take(table, "fixture_hum_dbu", faults.fixture_hum_dbu, {-300.0, 20.0});
     take(table, "pad_error_db", faults.pad_error_db, {-100.0, 100.0});
     take(table, "gain_error_db", faults.gain_error_db, {-100.0, 100.0});
     for (const auto& [key, member] : {std::pair{"mono_outputs", &rig::SimulatedFaults::mono_outputs},

@@ -223,21 +223,30 @@ Capture Session::capture(const CaptureRequest& request) {
 }
 
 signal::Recording Session::play_raw(int output, std::span<const double> samples, int inputs) {
+    std::vector<std::vector<double>> outputs(static_cast<std::size_t>(output),
+                                             std::vector<double>(samples.size(), 0.0));
+    outputs.back().assign(samples.begin(), samples.end());
+    return play_raw(outputs, inputs);
+}
+
+signal::Recording Session::play_raw(const std::vector<std::vector<double>>& outputs, int inputs) {
     if (!wiring_) throw UsageError("play: the wiring was not prepared");
     const auto& routing = setup_.routing;
+    const std::size_t frames = outputs.at(0).size();
     TakeRequest request;
     request.rate_hz = setup_.audio.sample_rate_hz;
     request.label = "path";
     request.feed = Feed::differential;
     request.input_channels = inputs;
-    request.play.assign(static_cast<std::size_t>(std::max(
-                            {output, routing.differential_output, routing.common_mode_output.value_or(0)})),
-                        std::vector<float>(samples.size(), 0.0F));
-    auto& channel = request.play[static_cast<std::size_t>(output) - 1];
-    for (std::size_t n = 0; n < samples.size(); ++n) {
-        if (!(std::abs(samples[n]) <= 1.0)) throw UsageError("play: a sample lies beyond full scale");
-        channel[n] = static_cast<float>(samples[n]);
-    }
+    const auto known = static_cast<std::size_t>(
+        std::max(routing.differential_output, routing.common_mode_output.value_or(0)));
+    request.play.assign(std::max(outputs.size(), known), std::vector<float>(frames, 0.0F));
+    for (std::size_t c = 0; c < outputs.size(); ++c)
+        for (std::size_t n = 0; n < frames; ++n) {
+            if (!(std::abs(outputs[c].at(n)) <= 1.0))
+                throw UsageError("play: a sample lies beyond full scale");
+            request.play[c][n] = static_cast<float>(outputs[c][n]);
+        }
     const Take take = backend_->play_and_record(request, stop_);
     signal::Recording recording;
     recording.rate_hz = request.rate_hz;

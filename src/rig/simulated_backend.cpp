@@ -121,8 +121,11 @@ std::vector<float> SimulatedBackend::through_input(std::vector<double> volts, do
     }
     auto samples = spectrum::inverse_fft(bins, size);
     samples.resize(frames);
-    add_hum(samples, units::sample_rms_from_dbfs(interface.ground_loop_hum_dbfs), -6.0, interface,
-            state_.start_s, rate_hz);
+    if (plug_ != Plug::input_terminated)
+        add_hum(samples, units::sample_rms_from_dbfs(interface.ground_loop_hum_dbfs), -6.0, interface,
+                state_.start_s, rate_hz);
+    add_hum(samples, units::sample_rms_from_dbfs(interface.own_hum_dbfs), -6.0, interface, state_.start_s,
+            rate_hz);
     const double noise_rms =
         units::sample_rms_from_dbfs(interface.input_noise_dbfs) * std::sqrt(0.5 * rate_hz / noise_band_hz);
     const double second = units::ratio_from_db(interface.second_harmonic_db),
@@ -213,8 +216,11 @@ std::vector<std::vector<float>> SimulatedBackend::recorded(
                             : pad_v;
     // With one output its plug sits in one of the places; the others hear nothing.
     const bool loop = plug_ == Plug::loop_differential || plug_ == Plug::loop_common_mode;
-    const bool pad_fed = !loop && (routing.common_mode_output || plug_ != Plug::common_mode_feed);
-    const bool common_fed = !loop && (routing.common_mode_output || plug_ == Plug::common_mode_feed);
+    const bool apart = plug_ == Plug::input_terminated || plug_ == Plug::unit_off ||
+                       plug_ == Plug::unit_terminated;  // no fixture at the preamp
+    const bool pad_fed = !loop && !apart && (routing.common_mode_output || plug_ != Plug::common_mode_feed);
+    const bool common_fed =
+        !loop && !apart && (routing.common_mode_output || plug_ == Plug::common_mode_feed);
     const double pad = pad_fed && !faults.feed_not_reaching
                            ? units::ratio_from_db(-setup_.fixture.differential_loss_db - faults.pad_error_db)
                            : 0.0;
@@ -235,7 +241,11 @@ std::vector<std::vector<float>> SimulatedBackend::recorded(
             for (double& v : out_v) v = -v;
     } else if (plug_ == Plug::loop_common_mode) {
         out_v = feed_v;
-    } else if (!faults.unit_off && !faults.output_not_connected) {
+    } else if (plug_ != Plug::input_terminated && plug_ != Plug::unit_off && !faults.unit_off &&
+               !faults.output_not_connected) {
+        if (!apart)
+            add_hum(differential_v, units::volts_rms_from_dbu(faults.fixture_hum_dbu), -6.0,
+                    setup_.simulated.interface, state_.start_s, request.rate_hz);
         PathState state = state_;
         state.gain_db += faults.gain_error_db;
         out_v = through_preamp(setup_.simulated, preamp_, setup_, state, differential_v, common_v,

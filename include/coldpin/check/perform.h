@@ -30,6 +30,8 @@ struct RunDetails {
     std::string operator_name;
     std::string notes;
     std::vector<std::string> tags;
+    bool preflight = true;     // look at wiring and path before anything is measured
+    bool accept_path = false;  // measure although the path is not honest; the run says so
 };
 
 // The captures a profile needs on a rig, in the order that changes cables and knobs as seldom as possible,
@@ -54,8 +56,9 @@ struct CapturePlan {
 // Throws UsageError when a level exceeds the rig's limits or cannot be reached: before anything is played.
 CapturePlan plan_captures(const profile::DeviceProfile& profile, const rig::Session& session);
 
-// Carries everything out. Throws what the session throws; a step whose measurement is refused
-// (CannotMeasure) is kept with its reason and its requirements are undecided.
+// Carries everything out, after a look at wiring and path (within two seconds; not for stored takes). Throws
+// CannotMeasure when nothing could be measured or would come out wrong, and what the session throws; a step
+// whose measurement is refused (CannotMeasure) is kept with its reason and its requirements are undecided.
 Run perform(const profile::DeviceProfile& profile, const profile::RigFile& rig, rig::Session& session,
             Bench& bench, const RunDetails& details);
 

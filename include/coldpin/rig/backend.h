@@ -25,6 +25,9 @@ enum class Plug {
     both,
     loop_differential,  // the differential output straight into the device's input
     loop_common_mode,   // the common-mode output straight into the device's input
+    input_terminated,   // a resistor in the device's input, the unit unplugged
+    unit_off,           // the unit's output in the device's input, the unit switched off
+    unit_terminated,    // the unit on, a resistor at its input
 };
 struct Wiring {
     Plug plug = Plug::both;    // `both` when the rig has an output for each

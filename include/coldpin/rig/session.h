@@ -7,6 +7,7 @@
 #include <optional>
 #include <span>
 #include <string>
+#include <vector>
 
 #include "coldpin/rig/backend.h"
 #include "coldpin/rig/content_check.h"
@@ -74,6 +75,8 @@ class Session {
     // heard, from the first frame on. For calibrating and path checks: no volts, no ramps, no retakes. Throws
     // UsageError for samples beyond full scale or wiring that was not prepared.
     signal::Recording play_raw(int output, std::span<const double> samples, int inputs);
+    // The same on several outputs at once: one list of samples each, output 1 first, all of one length.
+    signal::Recording play_raw(const std::vector<std::vector<double>>& outputs, int inputs);
 
     // A tone that goes on until `stop`, for a meter. Returns at once on a simulated rig that does not keep
     // time.

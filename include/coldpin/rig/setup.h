@@ -79,8 +79,10 @@ struct SimulatedInterface {
     double ac_corner_hz = 1.0;                            // of output and input together, first order
     double second_harmonic_db = -104.0;                   // at full scale, of the loop
     double third_harmonic_db = -108.0;
-    double leakage_db = -112.0;            // output to input inside the interface, flat
-    double ground_loop_hum_dbfs = -112.0;  // fundamental's RMS at the input, through its ground loop
+    double leakage_db = -112.0;  // output to input inside the interface, flat
+    double ground_loop_hum_dbfs =
+        -112.0;                    // fundamental's RMS at the input, through its loop when a unit is there
+    double own_hum_dbfs = -300.0;  // ... of the interface alone
     double mains_hz = 50.013;
     double mains_drift_hz_per_s = 0.0005;
 };
@@ -134,7 +136,8 @@ struct SimulatedFaults {
     double clock_drift_ppm_per_s = 0.0;
 
     // The bench.
-    bool unplugged = false;  // exact zeros everywhere
+    double fixture_hum_dbu = -300.0;  // picked up by fixture and generator, at the preamp's input
+    bool unplugged = false;           // exact zeros everywhere
     bool unit_off = false;
     bool feed_not_reaching = false;  // nothing arrives at the preamp's input
     bool output_not_connected = false;
