@@ -41,24 +41,33 @@ int design(const Words& words) {
     const rig::PadDesign made = rig::design_pad(wish);
     const bool halves = wish.kind != rig::PadKind::floating;
     if (words.json) {
-        const nlohmann::ordered_json json = {
-            {"schema", "coldpin-pad/1"},         {"series_ohms", made.pad.series_ohms},
-            {"shunt_ohms", made.pad.shunt_ohms}, {"shunt", words.shunt},
-            {"loss_db", made.loss_db},           {"loss_error_db", made.loss_error_db},
-            {"source_ohms", made.source_ohms},   {"source_error_percent", 100.0 * made.source_error}};
+        const nlohmann::ordered_json json = {{"schema", "coldpin-pad/1"},
+                                             {"series_ohms", made.pad.series_ohms},
+                                             {"series_trim_ohms", made.series_trim_ohms},
+                                             {"shunt_ohms", made.pad.shunt_ohms},
+                                             {"shunt", words.shunt},
+                                             {"loss_db", made.loss_db},
+                                             {"loss_error_db", made.loss_error_db},
+                                             {"source_ohms", made.source_ohms},
+                                             {"source_error_percent", 100.0 * made.source_error}};
         print(json.dump(2) + "\n");
         return exit_passed;
     }
     print(fmt::format(
         "{} values for {:g} dB {} from {:g} ohm\n"
-        "  in each leg     {:g} ohm\n"
+        "  in each leg     {}\n"
         "  {}{:g} ohm{}\n"
         "  gives           {:.3f} dB ({:+.3f}) from {:.2f} ohm ({:+.2f} %)\n\n"
         "For a fixture file (profiles/fixtures has whole ones):\n"
         "  [pad]\n  shunt = \"{}\"\n  series_ohms = {:g}\n  shunt_ohms = {:g}\n  tolerance_percent = 1\n",
         words.series, wish.loss_db,
         wish.input_ohms ? fmt::format("into {:g} ohm", *wish.input_ohms) : std::string("unloaded"),
-        wish.source_ohms, made.pad.series_ohms, halves ? "shunt, twice    " : "across          ",
+        wish.source_ohms,
+        made.series_trim_ohms > 0.0
+            ? fmt::format("{:g} ohm and {:g} ohm in series", made.pad.series_ohms - made.series_trim_ohms,
+                          made.series_trim_ohms)
+            : fmt::format("{:g} ohm", made.pad.series_ohms),
+        halves ? "shunt, twice    " : "across          ",
         halves ? 0.5 * made.pad.shunt_ohms : made.pad.shunt_ohms,
         wish.kind == rig::PadKind::split
             ? ", the middle on pin 1"

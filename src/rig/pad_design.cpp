@@ -29,7 +29,9 @@ PadDesign rated(const PadWish& wish, double series_ohms, double shunt_ohms) {
 }
 
 double badness(const PadDesign& design) {
-    return std::hypot(design.loss_error_db / loss_weight_db, design.source_error / source_weight);
+    // A loss can be trimmed, a source resistance cannot.
+    const double beyond = std::abs(design.source_error) > 0.9 * source_weight ? 100.0 : 0.0;
+    return beyond + std::hypot(design.loss_error_db / loss_weight_db, design.source_error / source_weight);
 }
 
 }  // namespace
@@ -60,6 +62,21 @@ PadDesign design_pad(const PadWish& wish) {
             if (first || badness(tried) < badness(best)) best = tried;
             first = false;
         }
+    // E96 steps by 2.4 %, which is 0.2 dB: where the nearest is not near enough a small resistor in series
+    // makes it up.
+    if (std::abs(best.loss_error_db) < 0.8 * loss_weight_db) return best;
+    const double shunt_ohms = best.pad.shunt_ohms;
+    const double loaded =
+        wish.input_ohms ? shunt_ohms * *wish.input_ohms / (shunt_ohms + *wish.input_ohms) : shunt_ohms;
+    const double ideal = 0.5 * loaded * (ratio - 1.0);
+    double large = units::preferred_value(wish.series, ideal);
+    if (large > 0.999 * ideal) large = units::preferred_value(wish.series, ideal, -1);
+    const double small = units::preferred_value(wish.series, ideal - large);
+    const PadDesign trimmed = rated(wish, large + small, shunt_ohms);
+    if (std::abs(trimmed.loss_error_db) < std::abs(best.loss_error_db)) {
+        best = trimmed;
+        best.series_trim_ohms = small;
+    }
     return best;
 }
 

@@ -107,11 +107,26 @@ class PathLook {
                 "again.");
     }
 
+    // A live input never rests on zero: its noise moves it.
+    bool ends_in_zeros() const {
+        constexpr double dead_s = 0.02;
+        const auto count = std::min(x_.size(), static_cast<std::size_t>(dead_s * rate_));
+        return std::all_of(x_.end() - static_cast<std::ptrdiff_t>(count), x_.end(),
+                           [](double v) { return v == 0.0; });
+    }
+
     bool find_sweep() {
         const auto sent = signal::render(probe_.sweep);
         const Lag lag = lag_of(x_, sent);
         // A rate that differs or a limiter smears the sweep; it is heard all the same.
         constexpr double certain = 12.0;
+        if (lag.clarity < certain && ends_in_zeros()) {
+            add(PathFault::not_heard,
+                "Exact zeros arrive from somewhere on: the device left, is switched off, or the operating "
+                "system does not "
+                "let programs record. Nothing was measured.");
+            return false;
+        }
         if (lag.clarity < certain) {
             add(PathFault::not_heard,
                 "Nothing of the test signal arrives here: the wrong output or input, a plug, a muted channel "

@@ -38,7 +38,7 @@ HumSearchReport searched(const rig::Setup& setup) {
 TEST(HumSearchTest, EachPlaceIsNamedWithWhatItAdds) {
     // The hum's RMS over all harmonics is a little above the fundamental's, which the settings state.
     const auto expect = [](HumPlace place, double about_dbu, const std::function<void(rig::Setup&)>& make) {
-        for (unsigned seed = 1; seed <= 8; ++seed) {
+        for (unsigned seed = 1; seed <= 4; ++seed) {
             rig::Setup setup = quiet(seed);
             make(setup);
             const auto report = searched(setup);

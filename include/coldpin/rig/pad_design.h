@@ -17,8 +17,9 @@ struct PadWish {
 };
 
 struct PadDesign {
-    Pad pad;
-    double loss_db = 0.0;  // what these parts give
+    Pad pad;                        // series_ohms: all that is in a leg
+    double series_trim_ohms = 0.0;  // of that, a second resistor in series; 0: one resistor is near enough
+    double loss_db = 0.0;           // what these parts give
     double loss_error_db = 0.0;
     double source_ohms = 0.0;
     double source_error = 0.0;  // fraction
