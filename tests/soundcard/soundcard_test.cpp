@@ -169,6 +169,48 @@ TEST(SoundCardTest, ADeviceThatLeavesIsNoMeasurement) {
     EXPECT_FALSE(std::filesystem::exists(folder.path() / "runs"));
 }
 
+void expect_refused(const char* words) {
+    TemporaryFolder folder;
+    const Outcome outcome =
+        run_coldpin("check --yes --rig " + here + "rig.toml --device " + here + "preamp.toml", folder.path());
+    EXPECT_EQ(outcome.status, 3) << outcome.out << outcome.err;
+    EXPECT_THAT(outcome.err, HasSubstr(words));
+    EXPECT_LT(outcome.wall_s, 5.0);
+    EXPECT_FALSE(std::filesystem::exists(folder.path() / "runs"));
+}
+
+TEST(SoundCardTest, AMovedKnobIsRefusedBeforeAnythingIsMeasured) {
+    expect_refused("a knob was moved");  // 0.2 dB
+}
+TEST(SoundCardTest, AMonitorMixIsRefusedBeforeAnythingIsMeasured) {
+    expect_refused("mixed back into the output");
+}
+TEST(SoundCardTest, ALimiterIsRefusedBeforeAnythingIsMeasured) {
+    expect_refused("depends on the level");
+}
+
+// The preamp of gain 0.8 stands for a loop whose input is 1.94 dB less sensitive than the output is strong.
+TEST(SoundCardTest, ALoopIsCalibratedByHand) {
+    TemporaryFolder folder;
+    std::ifstream source(here + "rig.toml");
+    std::string rig((std::istreambuf_iterator<char>(source)), {});
+    rig.erase(rig.find("common_mode = 2\n"), std::string("common_mode = 2\n").size());
+    std::ofstream(folder.path() / "rig.toml") << rig;
+    std::ofstream(folder.path() / "answers") << "\n\n\nall at noon\n";
+    const Outcome outcome = run_coldpin(
+        "calibrate --rig rig.toml --reading '3.083 V' --meter-percent 0.5 "
+        "--meter-digits 1 --meter-counts 6000 --json < answers",
+        folder.path());
+    ASSERT_EQ(outcome.status, 0) << outcome.out << outcome.err;
+    const auto calibration = *profile::read_rig((folder.path() / "rig.toml").string()).setup.calibration;
+    // 3.083 V at -6 dBFS is 18 dBu at 0 dBFS.
+    EXPECT_NEAR(calibration.output_full_scale_dbu, 18.0, 0.005);
+    EXPECT_NEAR(calibration.input_full_scale_dbu, 18.0 - 20.0 * std::log10(0.8), 0.01);
+    EXPECT_NEAR(*calibration.reference_full_scale_dbu, 18.0, 0.01);
+    EXPECT_GT(*calibration.loop_latency_frames, 100.0);
+    EXPECT_TRUE(std::filesystem::exists(folder.path() / "rig.calibrations.jsonl"));
+}
+
 TEST(SoundCardTest, AServerThatVanishesEndsTheProgramWithinSeconds) {
     const int server = process_of("CARD_SERVER_PID");
     TemporaryFolder folder;
