@@ -140,7 +140,10 @@ void look_ahead(const profile::DeviceProfile& profile, rig::Session& session,
     // As loud as the run itself, so that what happens at its level is seen.
     const double level_dbfs = std::min(
         -3.0, session.converter_level_dbfs(rig::Feed::differential, loudest_drive_dbu(first, setup)));
-    for (const auto& finding : session.check_path(level_dbfs).findings) {
+    const rig::PathReport path = session.check_path(level_dbfs);
+    session.set_clock_ppm(path.finding(rig::PathFault::two_clocks) != nullptr ? path.clock_ppm
+                                                                              : std::nullopt);
+    for (const auto& finding : path.findings) {
         if (finding.spoils && !details.accept_path) throw CannotMeasure(finding.sentence);
         cautions.push_back(finding.sentence);
     }

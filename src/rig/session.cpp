@@ -132,6 +132,7 @@ signal::Description Session::description_for(const CaptureRequest& request,
     }
     description.gain_db = request.gain_db;
     description.gain_uncertainty_db = request.gain_uncertainty_db;
+    description.clock_ppm = clock_ppm_;
     description.source_ohms = setup_.fixture.source_ohms;
     description.temperature_c = setup_.temperature_c;
     return description;

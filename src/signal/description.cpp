@@ -121,6 +121,7 @@ void for_each_member(Visitor&& visit) {
     visit("source_ohms", &Description::source_ohms);
     visit("temperature_c", &Description::temperature_c);
     visit("rejection_limit_db", &Description::rejection_limit_db);
+    visit("clock_ppm", &Description::clock_ppm);
 }
 
 template <typename Visitor>

@@ -180,5 +180,37 @@ TEST(PreflightTest, ARunSaysOrRefuses) {
     EXPECT_EQ(swapped.verdict, Verdict::fail);
 }
 
+// Two clocks 40 ppm apart: measured, corrected, said; every figure as with one clock.
+TEST(PreflightTest, SteadyClocksThatDifferAreCorrected) {
+    class Nobody : public Bench {
+        void ask(const std::string& instruction) override { FAIL() << instruction; }
+        void progress(const std::string& /*what*/, std::size_t /*step*/, std::size_t /*steps*/) override {}
+    } nobody;
+    auto rig = profile::read_rig("simulated");
+    rig.setup.simulated.preamp = device().simulated;
+    const auto run = [&](double ppm) {
+        auto other = rig;
+        other.setup.simulated.faults.clock_ppm = ppm;
+        rig::Session session(other.setup, rig::open_backend(other.setup));
+        return perform(device(), other, session, nobody, {});
+    };
+    const auto one = run(0.0), two = run(40.0);
+    EXPECT_THAT(two.cautions, testing::Contains(HasSubstr("different clocks")));
+    EXPECT_TRUE(one.cautions.empty());
+    EXPECT_EQ(two.verdict, one.verdict);
+    ASSERT_TRUE(two.captures.front().take.description.clock_ppm.has_value());
+    EXPECT_NEAR(*two.captures.front().take.description.clock_ppm, 40.0, 0.3);
+    for (std::size_t k = 0; k < one.steps.size(); ++k) {
+        const auto* a = one.steps[k].findings.curve("magnitude");
+        const auto* b = two.steps[k].findings.curve("magnitude");
+        if (a == nullptr || b == nullptr) continue;
+        ASSERT_EQ(a->y.size(), b->y.size());
+        for (std::size_t n = 0; n < a->y.size(); ++n)
+            if (a->x[n] >= 20.0 && a->x[n] <= 20000.0) {
+                EXPECT_NEAR(a->y[n], b->y[n], 0.02) << a->x[n];
+            }
+    }
+}
+
 }  // namespace
 }  // namespace coldpin::check

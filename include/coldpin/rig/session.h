@@ -87,6 +87,9 @@ class Session {
     // loop.
     PathReport check_path(double level_dbfs);
 
+    // Steady clocks that differ: every later capture's description says so. Nothing: one clock.
+    void set_clock_ppm(std::optional<double> ppm) { clock_ppm_ = ppm; }
+
     // Throws UsageError when the request would exceed a limit of the rig or cannot be reached by its
     // converter. capture() asks this first; a plan asks it for everything before anything is played.
     void require_within_limits(const CaptureRequest& request) const;
@@ -99,6 +102,7 @@ class Session {
     std::unique_ptr<Backend> backend_;
     const std::atomic<bool>* stop_;
     std::optional<Wiring> wiring_;
+    std::optional<double> clock_ppm_;
 };
 
 }  // namespace coldpin::rig

@@ -32,6 +32,9 @@ struct Description {
     std::optional<double> gain_uncertainty_db;
     std::optional<double> source_ohms;
     std::optional<double> temperature_c;
+    // The input's clock against the output's, when they are two: the samples are as they came, an analysis
+    // takes them at the output's rate.
+    std::optional<double> clock_ppm;
     std::optional<double> rejection_limit_db;  // what the fixture's own balance can prove at most
 
     std::vector<std::string> remarks;  // retakes, driver flags: for people
