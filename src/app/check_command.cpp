@@ -75,6 +75,8 @@ void add_check(CLI::App& program, Action& action) {
     command->add_flag_function(
         "--no-preflight", [words](std::int64_t) { words->details.preflight = false; },
         "do not look at wiring and path first (two seconds)");
+    command->add_flag("--auto-level", words->details.auto_level,
+                      "at each setting the highest drive that clips nothing, where the plan names none");
     command->add_flag("--accept-path", words->details.accept_path,
                       "measure although the path is not honest; the sheet says so");
     command->add_flag("--yes", words->yes,

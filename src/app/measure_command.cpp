@@ -30,6 +30,7 @@ struct Words {
     bool json = false;
     bool preflight = true;
     bool accept_path = false;
+    bool auto_level = false;
 };
 
 int measure_once(const Words& words) {
@@ -47,6 +48,7 @@ int measure_once(const Words& words) {
         details.time_utc = utc_now();
         details.preflight = words.preflight;
         details.accept_path = words.accept_path;
+        details.auto_level = words.auto_level;
         run = check::perform(plan, rig, session, bench, details);
     }
     for (auto& step : run.steps) {
@@ -95,6 +97,7 @@ void add_measure(CLI::App& program, Action& action) {
     command->add_flag_function(
         "--no-preflight", [words](std::int64_t) { words->preflight = false; },
         "do not look at wiring and path first (two seconds)");
+    command->add_flag("--auto-level", words->auto_level, "the highest drive that clips nothing");
     command->add_flag("--accept-path", words->accept_path,
                       "measure although the path is not honest; a caution says so");
     command->add_flag("--yes", words->yes, "ask nothing");

@@ -8,6 +8,7 @@
 #include <fmt/core.h>
 
 #include "coldpin/check/preflight.h"
+#include "coldpin/check/ranging.h"
 #include "coldpin/profile/quantities.h"
 #include "coldpin/units/error.h"
 
@@ -117,6 +118,43 @@ rig::Capture capture_within_range(rig::CaptureRequest& request, rig::Session& se
     }
 }
 
+// By how much the drives of a place are raised, and what none of its peaks may exceed.
+struct Raise {
+    double by_db = 0.0, most_dbu = 0.0;
+};
+
+// All differential drives of a place move together, so that its captures stay comparable; a drive that the
+// plan names stays.
+void raise_level(CapturePlan& plan, std::size_t index, const profile::DeviceProfile& profile,
+                 rig::Session& session, Run& run, std::map<Place, Raise>& ranges) {
+    PlannedCapture& planned = plan.captures[index];
+    rig::CaptureRequest& request = planned.request;
+    if (request.feed != rig::Feed::differential) return;
+    const bool named = std::any_of(plan.steps.begin(), plan.steps.end(), [&](const PlannedStep& step) {
+        return std::find(step.captures.begin(), step.captures.end(), index) != step.captures.end() &&
+               profile.plan.at(step.plan_step).drive_dbu.has_value();
+    });
+    if (named) return;
+    const Place place{planned.unit_channel, request.wiring.setting};
+    if (ranges.count(place) == 0) {
+        const double start_dbu = request.drive_dbu - 14.0;
+        const DriveRange range = find_drive(session, request.device_input, start_dbu);
+        ranges[place] = {range.drive_dbu - request.drive_dbu, range.drive_dbu};
+        run.cautions.push_back(
+            fmt::format("{}level found: {:.1f} dBu at the input, {:.1f} dBu at the output, limited by {}",
+                        request.wiring.setting.empty() ? "" : "setting " + request.wiring.setting + ": ",
+                        range.drive_dbu, range.output_dbu, range.limited_by));
+        run.cautions.insert(run.cautions.end(), range.sentences.begin(), range.sentences.end());
+    }
+    // A multitone's peak lies above that of a tone of its level.
+    constexpr double crest_db = 6.0;
+    const bool many = std::holds_alternative<signal::Multitone>(request.stimulus.kind);
+    request.drive_dbu =
+        std::min(request.drive_dbu + ranges[place].by_db, ranges[place].most_dbu - (many ? crest_db : 0.0));
+    request.expected_gain_db
+        .reset();  // the level at the output was measured; what was thought of the gain is not asked
+}
+
 // For the probe: the level of the first capture, within every limit of the rig.
 double loudest_drive_dbu(const rig::CaptureRequest& first, const rig::Setup& setup) {
     double drive = first.feed == rig::Feed::differential ? first.drive_dbu : -60.0;
@@ -180,6 +218,7 @@ Run perform(const profile::DeviceProfile& profile, const profile::RigFile& rig, 
                              ""});
 
     std::map<Place, measure::Figure> gains;
+    std::map<Place, Raise> ranges;
     std::optional<rig::Wiring> wiring;
     if (details.preflight && !plan.captures.empty()) {
         const rig::CaptureRequest& first = plan.captures.front().request;
@@ -198,6 +237,7 @@ Run perform(const profile::DeviceProfile& profile, const profile::RigFile& rig, 
             request.gain_db = gain->second.value;
             request.gain_uncertainty_db = gain->second.uncertainty;
         }
+        if (details.auto_level) raise_level(plan, i, profile, session, run, ranges);
         rig::Capture capture = capture_within_range(request, session, run.cautions);
         run.captures.push_back(
             {{capture.label, std::move(capture.recording), std::move(capture.description)}, capture.takes});

@@ -119,7 +119,12 @@ std::vector<double> without_hum(std::span<const double> stretch, double rate_hz,
     const auto mains = spectrum::fit_mains(rest, rate_hz);
     if (!mains.found) return samples;
     const double number = std::max(1.0, std::round(tone.frequency_hz / mains.frequency_hz));
-    if (std::abs(tone.frequency_hz - number * mains.frequency_hz) < 1.5 / length_s)
+    // What the tone itself leaves must not pass for a harmonic of a mains that nothing else shows.
+    const auto others =
+        std::count_if(mains.harmonics.begin(), mains.harmonics.end(), [&](const auto& harmonic) {
+            return harmonic.significant && static_cast<double>(harmonic.number) != number;
+        });
+    if (others >= 2 && std::abs(tone.frequency_hz - number * mains.frequency_hz) < 1.5 / length_s)
         cautions.push_back(
             fmt::format("the tone at {:g} Hz lies on harmonic {:g} of the mains ({:.2f} Hz): hum and tone "
                         "cannot be told apart there; use another frequency",

@@ -30,7 +30,9 @@ struct RunDetails {
     std::string operator_name;
     std::string notes;
     std::vector<std::string> tags;
-    bool preflight = true;     // look at wiring and path before anything is measured
+    bool preflight = true;  // look at wiring and path before anything is measured
+    bool auto_level =
+        false;  // at each setting the highest drive that clips nothing, where the plan names none
     bool accept_path = false;  // measure although the path is not honest; the run says so
 };
 
