@@ -1,16 +1,21 @@
+#include <algorithm>
 #include <filesystem>
 #include <optional>
 #include <string>
+#include <system_error>
+#include <vector>
 
 #include <fmt/core.h>
 #include <nlohmann/json.hpp>
 
 #include "coldpin/check/calibrate.h"
 #include "coldpin/measure/findings_json.h"
+#include "coldpin/profile/rig_draft.h"
 #include "coldpin/profile/rig_writer.h"
 #include "coldpin/records/calibration_history.h"
 #include "coldpin/report/calibrations.h"
 #include "coldpin/report/sheet.h"
+#include "coldpin/rig/devices.h"
 #include "coldpin/signal/text_file.h"
 #include "coldpin/units/error.h"
 
@@ -55,19 +60,80 @@ void show_cautions(const rig::Setup& setup) {
         "mains or loudspeaker lines.\n");
 }
 
+int whole_number(const std::string& text, int otherwise, int low, int high) {
+    if (text.find_first_not_of(" \t\r\n") == std::string::npos) return otherwise;
+    int number = 0;
+    try {
+        std::size_t end = 0;
+        number = std::stoi(text, &end);
+        if (text.find_first_not_of(" \t\r\n", end) != std::string::npos) number = low - 1;
+    } catch (const std::exception&) {
+        number = low - 1;
+    }
+    if (number < low || number > high)
+        throw UsageError(fmt::format("'{}': expected a number from {} to {}", text, low, high));
+    return number;
+}
+
+// Which device, which channels: a rig file to begin with, written once all is answered.
+void choose_device(const std::string& file, TerminalBench& bench) {
+    std::vector<rig::AudioDevice> able;
+    for (const auto& device : rig::list_devices())
+        if (device.can_serve) able.push_back(device);
+    if (able.empty())
+        throw CannotMeasure(
+            "no audio device of this machine can serve (coldpin devices says why): plug the interface in");
+    std::string question = fmt::format("{} does not exist yet; it will be made. Which device?", file);
+    for (std::size_t k = 0; k < able.size(); ++k)
+        question += fmt::format("\n    {}  {} ({}, {} in, {} out)", k + 1, able[k].name, able[k].host_api,
+                                able[k].input_channels, able[k].output_channels);
+    const auto& device = able[static_cast<std::size_t>(
+        whole_number(bench.answer(question), 1, 1, static_cast<int>(able.size())) - 1)];
+    profile::RigChoice choice;
+    choice.name = std::filesystem::path(file).stem().string();
+    choice.device = device.name;
+    choice.host_api = device.host_api;
+    const auto& rates = device.common_rates_hz;
+    choice.sample_rate_hz =
+        std::find(rates.begin(), rates.end(), 48000.0) != rates.end() ? 48000.0 : rates.front();
+    const int outputs = device.output_channels, inputs = device.input_channels;
+    choice.differential_output =
+        whole_number(bench.answer("Output to the differential pad? (Enter: 1)"), 1, 1, outputs);
+    if (outputs > 1) {
+        const int other = whole_number(
+            bench.answer("Output to the common-mode feed? (0: none, the plug is moved; Enter: 2)"), 2, 0,
+            outputs);
+        if (other > 0) choice.common_mode_output = other;
+    }
+    choice.device_input = whole_number(bench.answer("Input that hears the preamp? (Enter: 1)"), 1, 1, inputs);
+    if (inputs > 1) {
+        const int reference = whole_number(
+            bench.answer("Input with the reference tap, which hears what is sent? (0: none; Enter: 2)"), 2, 0,
+            inputs);
+        if (reference > 0) choice.reference_input = reference;
+    }
+    const std::string text = profile::rig_text_for(choice);
+    profile::rig_from_text(text, file);  // refuses one channel named twice
+    signal::write_text_file(file, text);
+    fmt::print(stderr, "  {} written: look at [fixtures.head] and [limits] in it before the first run.\n",
+               file);
+}
+
 int calibrate(const Words& words) {
-    if (words.rig.rig != "simulated") profile::require_writable(words.rig.rig);
+    TerminalBench bench(words.yes);
+    if (words.rig.rig != "simulated") {
+        std::error_code error;
+        if (!std::filesystem::exists(words.rig.rig, error) && !words.yes) choose_device(words.rig.rig, bench);
+        profile::require_writable(words.rig.rig);
+    }
     const profile::RigFile rig = read_rig(words.rig, nullptr);
     check::CalibrateOptions options = words.options;
     options.accuracy.true_rms = !words.average_responding;
     options.time_utc = utc_now();
     rig::Session session = open_session(rig);
     show_cautions(rig.setup);
-    check::CalibrationResult result;
-    {
-        TerminalBench bench(words.yes);
-        result = check::calibrate(session, bench, options);
-    }
+    const check::CalibrationResult result = check::calibrate(session, bench, options);
+    bench.clear();
     if (words.rig.rig != "simulated") {
         const std::string text = signal::read_text_file(words.rig.rig);
         // The one that goes is kept too, unless the history has it already.

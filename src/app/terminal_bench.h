@@ -18,6 +18,9 @@ class TerminalBench : public check::Bench {
     std::string answer(const std::string& question) override;
     void progress(const std::string& what, std::size_t step, std::size_t steps) override;
 
+    // Takes the progress line away.
+    void clear() { clear_progress(); }
+
   private:
     void clear_progress();
     std::string read_line(const std::string& asked);

@@ -9,6 +9,8 @@
 #include "coldpin/signal/text_file.h"
 #include "coldpin/units/error.h"
 
+#include "toml_text.h"
+
 namespace coldpin::profile {
 
 namespace {
@@ -36,19 +38,6 @@ std::string header_of(const std::string& line) {
     for (char c : line.substr(first + 1, end - first - 1))
         if (c != ' ' && c != '\t' && c != '[' && c != '"') name += c;
     return name;
-}
-
-std::string quoted(const std::string& text) {
-    std::string out = "\"";
-    for (char c : text) {
-        if (c == '"' || c == '\\')
-            out += std::string("\\") + c;
-        else if (static_cast<unsigned char>(c) < 0x20)
-            out += fmt::format("\\u{:04x}", static_cast<unsigned>(c));
-        else
-            out += c;
-    }
-    return out + "\"";
 }
 
 }  // namespace

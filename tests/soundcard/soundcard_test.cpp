@@ -211,6 +211,28 @@ TEST(SoundCardTest, ALoopIsCalibratedByHand) {
     EXPECT_TRUE(std::filesystem::exists(folder.path() / "rig.calibrations.jsonl"));
 }
 
+TEST(SoundCardTest, ANewRigIsMadeFromAnswers) {
+    TemporaryFolder folder;
+    // Device, output, no common-mode output, input, reference; then pad, loop, knobs.
+    std::ofstream(folder.path() / "answers") << "1\n\n0\n1\n2\n\n\nall at noon\n";
+    const Outcome outcome =
+        run_coldpin("calibrate --rig new.toml --reading '3.083 V' < answers", folder.path());
+    ASSERT_EQ(outcome.status, 0) << outcome.out << outcome.err;
+    const auto setup = profile::read_rig((folder.path() / "new.toml").string()).setup;
+    EXPECT_EQ(setup.audio.output_device, "preamp");
+    EXPECT_FALSE(setup.routing.common_mode_output.has_value());
+    EXPECT_EQ(setup.routing.reference_input, 2);
+    EXPECT_NEAR(setup.calibration->output_full_scale_dbu, 18.0, 0.005);
+    EXPECT_EQ(setup.calibration->knobs, "all at noon");
+    EXPECT_NEAR(setup.fixture.differential_loss_db, 40.7, 0.1);
+    // A wrong answer is refused and leaves nothing.
+    std::ofstream(folder.path() / "wrong") << "1\n7\n";
+    const Outcome wrong = run_coldpin("calibrate --rig other.toml < wrong", folder.path());
+    EXPECT_EQ(wrong.status, 2);
+    EXPECT_THAT(wrong.err, HasSubstr("from 1 to 2"));
+    EXPECT_FALSE(std::filesystem::exists(folder.path() / "other.toml"));
+}
+
 TEST(SoundCardTest, AServerThatVanishesEndsTheProgramWithinSeconds) {
     const int server = process_of("CARD_SERVER_PID");
     TemporaryFolder folder;
