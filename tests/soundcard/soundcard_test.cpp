@@ -233,6 +233,21 @@ TEST(SoundCardTest, ANewRigIsMadeFromAnswers) {
     EXPECT_FALSE(std::filesystem::exists(folder.path() / "other.toml"));
 }
 
+TEST(SoundCardTest, ADeviceThatVanishesWhileCalibratingLeavesTheOldOne) {
+    TemporaryFolder folder;
+    std::ifstream source(here + "rig.toml");
+    std::string rig((std::istreambuf_iterator<char>(source)), {});
+    rig.erase(rig.find("common_mode = 2\n"), std::string("common_mode = 2\n").size());
+    std::ofstream(folder.path() / "rig.toml") << rig;
+    std::ofstream(folder.path() / "answers") << "\n\n\nall at noon\n";
+    const Outcome outcome =
+        run_coldpin("calibrate --rig rig.toml --reading '3.083 V' < answers", folder.path());
+    EXPECT_EQ(outcome.status, 3) << outcome.out << outcome.err;
+    EXPECT_LT(outcome.wall_s, 20.0);
+    std::ifstream after(folder.path() / "rig.toml");
+    EXPECT_EQ(std::string((std::istreambuf_iterator<char>(after)), {}), rig);
+}
+
 TEST(SoundCardTest, AServerThatVanishesEndsTheProgramWithinSeconds) {
     const int server = process_of("CARD_SERVER_PID");
     TemporaryFolder folder;
