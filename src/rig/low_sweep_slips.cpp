@@ -109,7 +109,7 @@ std::optional<LowSlip> find_whole_turns(const Course& course, double rate_hz) {
     const auto count = static_cast<int>(course.amplitude.size());
     std::vector<double> turns_per_e;
     for (int k = 0; k + per_turn < count; ++k) {
-        const auto here = static_cast<std::size_t>(k), next = static_cast<std::size_t>(k + per_turn);
+        const auto here = static_cast<std::size_t>(k), next = static_cast<std::size_t>(k) + per_turn;
         turns_per_e.push_back(std::arg(course.amplitude[next] * std::conj(course.amplitude[here])) / two_pi /
                               std::log(course.hz[next] / course.hz[here]));
     }
@@ -130,7 +130,7 @@ std::optional<LowSlip> find_whole_turns(const Course& course, double rate_hz) {
         const double clarity = std::abs(after - before) / needed;
         if (clarity > clearest) {
             clearest = clarity;
-            const auto at = static_cast<std::size_t>(k + per_turn / 2);
+            const auto at = static_cast<std::size_t>(k) + per_turn / 2;
             found = {static_cast<std::size_t>(course.frames[at]), (after - before) / course.hz[at] * rate_hz};
         }
     }
@@ -169,7 +169,7 @@ LowSweepReport find_low_slip(std::span<const double> channel, double rate_hz,
         const Complex amplitude = functionals.amplitude * here, step = functionals.step * here;
         // Windows are turned to one another by whole sixteenths.
         const Complex back = std::polar(1.0, -two_pi * (k % per_turn) / per_turn);
-        const double frame = frames[static_cast<std::size_t>(k + half_points)];
+        const double frame = frames[static_cast<std::size_t>(k) + half_points];
         course.frames.push_back(frame);
         course.hz.push_back(sweep.from_hz *
                             std::exp((frame - static_cast<double>(lag)) / rate_hz / constant_s));
