@@ -116,7 +116,8 @@ void add_analyse(CLI::App& program, Action& action) {
         program.add_subcommand("analyse", "the same analysis on stored recordings, or on a whole run folder");
     command
         ->add_option("what", words->what,
-                     "gain, response, noise, hum, cmrr, polarity or latency; or a run folder")
+                     "gain, response, noise, hum, cmrr, distortion, crosstalk, polarity or latency; or a run "
+                     "folder")
         ->required()
         ->type_name("KIND|RUN-FOLDER");
     command->add_option("file", words->file, "the recording (for cmrr see --differential)")
@@ -149,6 +150,8 @@ void add_analyse(CLI::App& program, Action& action) {
         ->add_option("--leakage", words->leakage,
                      "recording with the feed off, aligned with the common-mode one (cmrr)")
         ->type_name("L.wav");
+    command->add_option("--driven-channel", options.driven_channel, "channel that was driven (crosstalk)")
+        ->type_name("M");
     command->add_option("--stimulus", words->stimulus, "what was played")->type_name("S.wav");
     command
         ->add_option("--reference-frequency", options.reference_frequency_hz,
@@ -174,7 +177,7 @@ void add_analyse(CLI::App& program, Action& action) {
         "  coldpin analyse runs/2026-05-04T090307Z_0042");
     command->callback([words, &action] {
         action = [words] {
-            const auto& kinds = profile::measure_kinds();
+            const auto& kinds = profile::analysis_kinds();
             if (std::find(kinds.begin(), kinds.end(), words->what) != kinds.end())
                 return analyse_files(*words);
             if (std::filesystem::exists(words->what)) return analyse_run(*words);

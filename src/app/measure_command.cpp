@@ -68,7 +68,8 @@ void add_measure(CLI::App& program, Action& action) {
     auto words = std::make_shared<Words>();
     auto& wanted = words->wanted;
     CLI::App* command = program.add_subcommand("measure", "one measurement, now");
-    command->add_option("kind", wanted.kind, "gain, response, noise, hum, cmrr, polarity or latency")
+    command
+        ->add_option("kind", wanted.kind, "gain, response, noise, hum, cmrr, distortion, polarity or latency")
         ->required()
         ->type_name("KIND");
     add_rig_options(*command, words->rig);

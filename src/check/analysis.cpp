@@ -5,6 +5,8 @@
 #include <fmt/format.h>
 
 #include "coldpin/measure/cmrr.h"
+#include "coldpin/measure/crosstalk.h"
+#include "coldpin/measure/distortion.h"
 #include "coldpin/measure/gain.h"
 #include "coldpin/measure/hum.h"
 #include "coldpin/measure/noise.h"
@@ -95,6 +97,19 @@ Played played_for(const DescribedRecording& take, const AnalysisInputs& inputs) 
     return {take.description.stimulus, {}};
 }
 
+double tone_of(const DescribedRecording& take, const AnalysisOptions& options, double rate_hz) {
+    std::vector<double> tones = options.frequencies_hz;
+    if (tones.empty() && take.description.stimulus)
+        tones = signal::tone_frequencies_hz(*take.description.stimulus);
+    if (tones.empty())
+        throw UsageError(
+            fmt::format("{}: which tone was played is unknown: say it with --frequency", take.name));
+    if (!(tones.front() > 0.0) || !(tones.front() < 0.5 * rate_hz))
+        throw UsageError(
+            fmt::format("--frequency {:g}: outside what {:g} Hz sampling carries", tones.front(), rate_hz));
+    return tones.front();
+}
+
 Findings analyse_gain(const AnalysisInputs& inputs, const AnalysisOptions& options) {
     const auto& take = need_main(inputs);
     measure::GainQuestion question;
@@ -108,16 +123,7 @@ Findings analyse_gain(const AnalysisInputs& inputs, const AnalysisOptions& optio
                         "(--input-full-scale-dbu)",
                         take.name));
     question.drive_dbu = drive_of(take, options.drive_dbu, "--drive-dbu");
-    std::vector<double> tones = options.frequencies_hz;
-    if (tones.empty() && take.description.stimulus)
-        tones = signal::tone_frequencies_hz(*take.description.stimulus);
-    if (tones.empty())
-        throw UsageError(
-            fmt::format("{}: which tone was played is unknown: say it with --frequency", take.name));
-    if (!(tones.front() > 0.0) || !(tones.front() < 0.5 * question.rate_hz))
-        throw UsageError(fmt::format("--frequency {:g}: outside what {:g} Hz sampling carries", tones.front(),
-                                     question.rate_hz));
-    question.frequency_hz = tones.front();
+    question.frequency_hz = tone_of(take, options, question.rate_hz);
     return measure::gain(question);
 }
 
@@ -168,6 +174,36 @@ Findings analyse_noise(const AnalysisInputs& inputs, const AnalysisOptions& opti
     }
     question.interface_beside = interface_beside(take, options);
     return measure::noise(question);
+}
+
+Findings analyse_distortion(const AnalysisInputs& inputs, const AnalysisOptions& options) {
+    const auto& take = need_main(inputs);
+    measure::DistortionQuestion question;
+    question.recording = device_channel(take, options);
+    question.rate_hz = take.recording.rate_hz;
+    question.scale = scale_of(take, options);
+    question.band = options.band.value_or(measure::Band{});
+    question.frequency_hz = tone_of(take, options, question.rate_hz);
+    return measure::distortion(question);
+}
+
+Findings analyse_crosstalk(const AnalysisInputs& inputs, const AnalysisOptions& options) {
+    const auto& take = need_main(inputs);
+    if (!options.driven_channel)
+        throw UsageError(
+            "crosstalk needs the channel that was driven (--driven-channel M) beside the one that was not "
+            "(--channel N)");
+    measure::CrosstalkQuestion question;
+    question.driven = take.recording.channel(*options.driven_channel, take.name);
+    question.quiet = device_channel(take, options);
+    if (*options.driven_channel == options.channel.value_or(take.description.device_channel.value_or(1)))
+        throw UsageError(
+            fmt::format("--channel and --driven-channel are both {}: name the one that was not driven with "
+                        "--channel",
+                        *options.driven_channel));
+    question.rate_hz = take.recording.rate_hz;
+    question.frequency_hz = tone_of(take, options, question.rate_hz);
+    return measure::crosstalk(question);
 }
 
 Findings analyse_hum(const AnalysisInputs& inputs, const AnalysisOptions& options) {
@@ -248,8 +284,10 @@ Findings analyse_as_is(const std::string& kind, const AnalysisInputs& inputs,
     if (kind == "noise") return analyse_noise(inputs, options);
     if (kind == "hum") return analyse_hum(inputs, options);
     if (kind == "cmrr") return analyse_cmrr(inputs, options);
+    if (kind == "distortion") return analyse_distortion(inputs, options);
+    if (kind == "crosstalk") return analyse_crosstalk(inputs, options);
     if (kind == "polarity" || kind == "latency") return analyse_timing(kind, inputs, options);
-    const auto& kinds = profile::measure_kinds();
+    const auto& kinds = profile::analysis_kinds();
     const std::string near = profile::nearest_word(kind, {kinds.begin(), kinds.end()});
     throw UsageError(fmt::format("there is no analysis '{}': it is one of {}{}", kind, fmt::join(kinds, ", "),
                                  near.empty() ? "" : "; did you mean " + near + "?"));

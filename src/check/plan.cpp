@@ -157,10 +157,11 @@ class Planner {
 
     void draft_step(const PlanStep& step, std::size_t index, std::vector<Draft>& pad,
                     std::vector<Draft>& idle, std::vector<Draft>& feed) {
-        if (step.measure == "gain") {
+        if (step.measure == "gain" || step.measure == "distortion") {
+            // The same tone serves both: the first to come names the recording.
             const auto tones = step.frequencies_hz.empty() ? std::vector<double>{997.0} : step.frequencies_hz;
             for (double hz : tones)
-                add(pad, draft(joined({"gain", tones.size() > 1 ? fmt::format("{:g}Hz", hz) : ""}),
+                add(pad, draft(joined({step.measure, tones.size() > 1 ? fmt::format("{:g}Hz", hz) : ""}),
                                Feed::differential, tones_for({hz}, step.length_s.value_or(1.0)),
                                differential_drive(step, 0.0), step.setting, index));
         } else if (step.measure == "noise" || step.measure == "hum") {

@@ -22,7 +22,7 @@ struct SpecialKey {
 };
 const std::vector<SpecialKey>& special_keys() {
     static const std::vector<SpecialKey> all = {
-        {"drive_dbu", {"gain", "response", "cmrr", "polarity", "latency"}},
+        {"drive_dbu", {"gain", "response", "cmrr", "distortion", "polarity", "latency"}},
         {"common_mode_drive_dbu", {"cmrr"}},
         {"frequencies_hz", {"gain", "cmrr"}},
         {"from_hz", {"response", "cmrr", "polarity", "latency"}},
@@ -119,7 +119,7 @@ PlanStep read_plan_step(TableReader& table, const DeviceProfile& profile) {
 }
 
 std::vector<double> figure_frequencies_hz(const PlanStep& step) {
-    if (step.measure == "gain")
+    if (step.measure == "gain" || step.measure == "distortion")
         return step.frequencies_hz.empty() ? std::vector<double>{997.0} : step.frequencies_hz;
     if (step.measure != "cmrr") return {};
     if (step.stimulus == "tones")

@@ -38,6 +38,10 @@ const std::vector<Quantity>& quantities() {
         {"hum_harmonic", "hum", "hum harmonic", {"dBu", "dBV", "V", "dBFS"}, {"harmonic"}},
         {"hum_to_noise", "hum", "hum over noise", {"dB"}, {}},
         {"common_mode_rejection", "cmrr", "common-mode rejection", {"dB"}, {"frequency_hz"}, false, true},
+        {"thd", "distortion", "harmonic distortion", {"%"}, {"frequency_hz"}},
+        {"thd_n", "distortion", "distortion and noise", {"%"}, {"frequency_hz"}},
+        {"sinad", "distortion", "signal over noise and distortion", {"dB"}, {"frequency_hz"}, false, true},
+        {"harmonic", "distortion", "harmonic", {"dB"}, {"harmonic", "frequency_hz"}},
         {"polarity", "polarity", "polarity", {""}, {}},
         {"latency", "latency", "latency of the path", {"frames"}, {}},
     };
@@ -52,8 +56,17 @@ const Quantity* find_quantity(std::string_view name) {
 }
 
 const std::vector<std::string_view>& measure_kinds() {
-    static const std::vector<std::string_view> kinds = {"gain", "response", "noise",  "hum",
-                                                        "cmrr", "polarity", "latency"};
+    static const std::vector<std::string_view> kinds = {"gain", "response",   "noise",    "hum",
+                                                        "cmrr", "distortion", "polarity", "latency"};
+    return kinds;
+}
+
+const std::vector<std::string_view>& analysis_kinds() {
+    static const std::vector<std::string_view> kinds = [] {
+        auto all = measure_kinds();
+        all.push_back("crosstalk");
+        return all;
+    }();
     return kinds;
 }
 

@@ -100,7 +100,8 @@ TEST(CheckCommandTest, LooseRecordingsGiveTheRunsFigures) {
 
 TEST(CheckCommandTest, MeasureGivesOneFinding) {
     TemporaryFolder folder;
-    for (const std::string kind : {"gain", "response", "noise", "hum", "cmrr", "polarity", "latency"}) {
+    for (const std::string kind :
+         {"gain", "response", "noise", "hum", "cmrr", "distortion", "polarity", "latency"}) {
         const Outcome outcome =
             run_coldpin("measure " + kind + " --rig simulated --json --nominal-gain-db 40", folder.path());
         ASSERT_EQ(outcome.status, 0) << kind << outcome.err;

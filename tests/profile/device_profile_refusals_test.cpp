@@ -80,15 +80,15 @@ TEST(DeviceProfileRefusalsTest, RefusesMissingOrMisspeltNames) {
            "where 'quantiy' stands?"));
     EXPECT_EQ(said_with("measure = \"gain\"", ""),
               at(8, 1,
-                 "in [[plan]] measure: found nothing, expected gain, response, noise, hum, cmrr, polarity or "
-                 "latency"));
+                 "in [[plan]] measure: found nothing, expected gain, response, noise, hum, cmrr, distortion, "
+                 "polarity or latency"));
 }
 
 TEST(DeviceProfileRefusalsTest, RefusesMeasurementsAndQuantitiesThatDoNotExist) {
     EXPECT_EQ(said_with("measure = \"gain\"", "measure = \"gian\""),
               at(9, 11,
-                 "in [[plan]] measure: found 'gian', expected gain, response, noise, hum, cmrr, polarity or "
-                 "latency; "
+                 "in [[plan]] measure: found 'gian', expected gain, response, noise, hum, cmrr, distortion, "
+                 "polarity or latency; "
                  "did you mean 'gain'?"));
     EXPECT_EQ(
         said_with("quantity = \"gain\"", "quantity = \"noise_imput_referred\""),

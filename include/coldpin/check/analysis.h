@@ -33,6 +33,7 @@ struct AnalysisInputs {
 struct AnalysisOptions {
     std::optional<int> channel;
     std::optional<int> reference_channel;
+    std::optional<int> driven_channel;  // crosstalk
     std::optional<double> input_full_scale_dbu;
     std::optional<measure::Band> band;
     std::vector<double> frequencies_hz;

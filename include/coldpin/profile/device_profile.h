@@ -38,7 +38,8 @@ struct Requirement {
 };
 
 struct PlanStep {
-    std::string measure;  // "gain", "response", "noise", "hum", "cmrr", "polarity", "latency"
+    std::string measure;  // "gain", "response", "noise", "hum", "cmrr", "distortion", "polarity",
+                          // "latency"
     std::string setting;
     std::optional<double> drive_dbu;              // differential; absent: chosen so that the output is +4 dBu
     std::optional<double> common_mode_drive_dbu;  // absent: 0 dBu, within the rig's limits

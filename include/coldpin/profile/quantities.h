@@ -20,7 +20,11 @@ struct Quantity {
 
 const std::vector<Quantity>& quantities();
 const Quantity* find_quantity(std::string_view name);  // nullptr when unknown
-const std::vector<std::string_view>& measure_kinds();  // gain, response, noise, hum, cmrr, polarity, latency
+const std::vector<std::string_view>& measure_kinds();  // gain, response, noise, hum, cmrr,
+                                                       // distortion, polarity, latency
+
+// Those, and what only stored recordings can be asked: crosstalk.
+const std::vector<std::string_view>& analysis_kinds();
 
 // The candidate with the smallest edit distance to `word`, the first of equals; upper and lower case count as
 // the same. Empty when none is near (more than half the word would have to change).
