@@ -2,11 +2,14 @@
 
 #include <algorithm>
 #include <cmath>
+#include <future>
+#include <optional>
 
 #include <fmt/core.h>
 
 #include "coldpin/measure/clipping.h"
 #include "coldpin/spectrum/averaged_spectrum.h"
+#include "coldpin/spectrum/quasi_peak.h"
 #include "coldpin/spectrum/statistics.h"
 #include "coldpin/spectrum/weighting.h"
 #include "coldpin/units/error.h"
@@ -197,6 +200,50 @@ void add_levels(Findings& findings, const NoiseQuestion& question, Weighting wei
         {"noise_input_referred", input, "dBu", input_uncertainty_db, 2.0, own.bound, conditions});
 }
 
+// The quasi-peak reading takes as long as everything else: it runs beside it. Absent for recordings that are
+// too short or too slow for it.
+std::optional<std::future<spectrum::QuasiPeakReading>> quasi_peak_beside(const NoiseQuestion& question) {
+    constexpr double shortest_s = 1.0, least_rate_hz = 32000.0;
+    const double length_s = static_cast<double>(question.recording.size()) / question.rate_hz;
+    if (length_s < shortest_s || question.rate_hz < least_rate_hz) return std::nullopt;
+    return std::async(std::launch::async, [&question] {
+        return spectrum::quasi_peak_468(question.recording, question.rate_hz, question.band.low_hz,
+                                        question.band.high_hz);
+    });
+}
+
+// Highest reading in the recording. The interface's share cannot be taken off a peak: where it matters, it is
+// a bound.
+void add_quasi_peak(Findings& findings, const NoiseQuestion& question,
+                    const spectrum::QuasiPeakReading& quasi_peak, Bound bound) {
+    constexpr double settled_s = 0.7;
+    if (!(quasi_peak.highest > 0.0)) return;
+    // How far readings scatter once the detector is charged says how far another recording's highest would
+    // be.
+    double sum = 0.0, squares = 0.0, count = 0.0;
+    for (std::size_t k = static_cast<std::size_t>(settled_s / 0.1); k < quasi_peak.readings.size(); ++k) {
+        const double db = units::db_from_ratio(quasi_peak.readings[k]);
+        sum += db;
+        squares += db * db;
+        count += 1.0;
+    }
+    const double scatter_db =
+        count > 1.0 ? std::sqrt(std::max(0.0, squares / count - sum * sum / count / count)) : 0.5;
+    const double uncertainty_db =
+        spectrum::combine(std::max(0.1, 2.0 * scatter_db), question.scale.uncertainty_db);
+    Conditions conditions = conditions_for(question, Weighting::itu468, false);
+    conditions.set("detector", std::string("quasi-peak"));
+    const double level = question.scale.level_from_sample_rms(quasi_peak.highest);
+    findings.figures.push_back(
+        {"noise_output", level, question.scale.unit(), uncertainty_db, 2.0, bound, conditions});
+    if (!question.gain_db || !question.scale.full_scale_dbu) return;
+    conditions.set("gain_db", question.gain_db->value_db);
+    if (question.source_ohms) conditions.set("source_ohms", *question.source_ohms);
+    findings.figures.push_back({"noise_input_referred", level - question.gain_db->value_db, "dBu",
+                                spectrum::combine(uncertainty_db, question.gain_db->uncertainty_db), 2.0,
+                                bound, conditions});
+}
+
 // The source's own share is brought from its temperature to the 290 K that the noise figure refers to.
 void add_noise_figure(Findings& findings, const NoiseQuestion& question) {
     const Figure* input = findings.figure("noise_input_referred", {{"weighting", std::string("none")}});
@@ -249,11 +296,16 @@ Findings noise(const NoiseQuestion& question) {
     require_usable(question);
     Findings findings;
     findings.kind = "noise";
+    auto quasi_peak = quasi_peak_beside(question);
     const Spectra spectra = spectra_of(question, findings.cautions);
     double least_excess_beside_db = 1e9;
     for (Weighting weighting : {Weighting::none, Weighting::a, Weighting::c, Weighting::itu468})
         add_levels(findings, question, weighting,
                    own_power_of(question, spectra, weighting, least_excess_beside_db));
+    const Figure* weighted = findings.figure("noise_output", {{"weighting", std::string("468")}});
+    if (quasi_peak)
+        add_quasi_peak(findings, question, quasi_peak->get(),
+                       weighted != nullptr ? weighted->bound : Bound::exact);
     add_noise_figure(findings, question);
     findings.curves.push_back(density_curve(question, spectra.whole));
     say_interface(findings, least_excess_beside_db);

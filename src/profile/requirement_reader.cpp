@@ -45,7 +45,7 @@ void read_conditions(TableReader& table, const Quantity& quantity, Requirement& 
             requirement.conditions.set(name,
                                        table.choice(condition, {"none", "A", "C", "468"}).value_or("none"));
         } else if (condition == "detector") {
-            requirement.conditions.set(name, table.choice(condition, {"rms"}).value_or("rms"));
+            requirement.conditions.set(name, table.choice(condition, {"rms", "quasi-peak"}).value_or("rms"));
         } else if (condition == "harmonic") {
             const auto number = table.whole(condition, 1, most_harmonics);
             if (!number)

@@ -121,6 +121,9 @@ std::string quantity_text(const std::string& quantity, const measure::Conditions
         const std::string* name = std::get_if<std::string>(weighting);
         if (name != nullptr && *name == "none") text += ", unweighted";
         if (name != nullptr && *name != "none") text += ", " + *name + "-weighted";
+        const auto* detector = conditions.find("detector");
+        const auto* how = detector != nullptr ? std::get_if<std::string>(detector) : nullptr;
+        if (how != nullptr && *how == "quasi-peak") text += " quasi-peak";
     }
     const double harmonic = number_or(conditions.find("harmonic"), 0.0);
     if (harmonic > 0.0) text += fmt::format(" {:g}", harmonic);
