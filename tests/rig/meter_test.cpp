@@ -60,6 +60,14 @@ TEST(MeterTest, AccuracyBecomesUncertainty) {
               meter_uncertainty_db({1.0, 1e-9}, {0.1, 0.0, 2000.0, true}, 0.03) + 0.05);
 }
 
+// The GUM's own example of a rectangular distribution (JCGM 100, 4.3.7): limits of 0.40 give a standard
+// uncertainty of 0.23; expanded twice that.
+TEST(MeterTest, ARectangleIsTheGumsExample) {
+    const double relative =
+        std::pow(10.0, meter_uncertainty_db({1.0, 1e-12}, {0.40, 0.0, 2000.0, true}) / 20.0) - 1.0;
+    EXPECT_NEAR(100.0 * relative / 2.0, 0.23, 0.005);
+}
+
 // Random meters inside their stated limits: the true value lies within the stated uncertainty at least 95
 // times in 100.
 TEST(MeterTest, TheUncertaintyHolds) {
