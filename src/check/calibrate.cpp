@@ -132,7 +132,7 @@ class Calibrator {
                  "Phantom power off, monitors and headphones off. Leave the pad on output {}, unplug the "
                  "preamp from the pad, and set every knob where it will stay.",
                  routing().differential_output));
-        level_dbfs_ = std::floor(10.0 * highest_level_for_meter()) / 10.0;
+        level_dbfs_ = std::floor(10.0 * highest_level_for_meter(options_.level_dbfs)) / 10.0;
         bench_.progress("meter", 0, steps);
         if (options_.reading) {
             reading_ = rig::parse_meter_reading(*options_.reading);
@@ -150,16 +150,21 @@ class Calibrator {
             units::dbu_from_volts_rms(reading_.volts_rms) - level_dbfs_;
     }
 
-    // Never more than the rig allows at the preamp, should it still be connected: known once calibrated.
-    double highest_level_for_meter() const {
-        const auto& limits = session_.setup().limits;
-        if (!session_.setup().calibration || !limits.max_preamp_input_dbu) return options_.level_dbfs;
-        return std::min(options_.level_dbfs,
-                        session_.converter_level_dbfs(rig::Feed::differential, *limits.max_preamp_input_dbu));
+    // Never more than the rig allows at the preamp, should it still be connected: by the calibration before,
+    // and by the reading once there is one.
+    double highest_level_for_meter(double wanted_dbfs) const {
+        const auto& limit_dbu = session_.setup().limits.max_preamp_input_dbu;
+        double level = wanted_dbfs;
+        if (limit_dbu && session_.setup().calibration)
+            level = std::min(level, session_.converter_level_dbfs(rig::Feed::differential, *limit_dbu));
+        if (limit_dbu && reading_.volts_rms > 0.0)
+            level = std::min(level, *limit_dbu + session_.setup().fixture.differential_loss_db + level_dbfs_ -
+                                        units::dbu_from_volts_rms(reading_.volts_rms));
+        return level;
     }
 
     void better_range() {
-        const double headroom_db = std::max(0.0, -0.5 - level_dbfs_);
+        const double headroom_db = std::max(0.0, highest_level_for_meter(-0.5) - level_dbfs_);
         const auto advice = rig::advise_range(reading_, options_.accuracy, headroom_db);
         if (!advice) return;
         // What is said is what is played: a tenth of a decibel.

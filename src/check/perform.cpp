@@ -118,9 +118,9 @@ rig::Capture capture_within_range(rig::CaptureRequest& request, rig::Session& se
     }
 }
 
-// By how much the drives of a place are raised, and what none of its peaks may exceed.
+// By how much the drives of a place are raised, what none of its peaks may exceed, and the gain seen.
 struct Raise {
-    double by_db = 0.0, most_dbu = 0.0;
+    double by_db = 0.0, most_dbu = 0.0, gain_db = 0.0;
 };
 
 // All differential drives of a place move together, so that its captures stay comparable; a drive that the
@@ -139,7 +139,8 @@ void raise_level(CapturePlan& plan, std::size_t index, const profile::DeviceProf
     if (ranges.count(place) == 0) {
         const double start_dbu = request.drive_dbu - 14.0;
         const DriveRange range = find_drive(session, request.device_input, start_dbu);
-        ranges[place] = {range.drive_dbu - request.drive_dbu, range.drive_dbu};
+        ranges[place] = {range.drive_dbu - request.drive_dbu, range.drive_dbu,
+                         range.output_dbu - range.drive_dbu};
         run.cautions.push_back(
             fmt::format("{}level found: {:.1f} dBu at the input, {:.1f} dBu at the output, limited by {}",
                         request.wiring.setting.empty() ? "" : "setting " + request.wiring.setting + ": ",
@@ -151,8 +152,7 @@ void raise_level(CapturePlan& plan, std::size_t index, const profile::DeviceProf
     const bool many = std::holds_alternative<signal::Multitone>(request.stimulus.kind);
     request.drive_dbu =
         std::min(request.drive_dbu + ranges[place].by_db, ranges[place].most_dbu - (many ? crest_db : 0.0));
-    request.expected_gain_db
-        .reset();  // the level at the output was measured; what was thought of the gain is not asked
+    request.expected_gain_db = ranges[place].gain_db;  // as measured: the limit at the output still holds
 }
 
 // For the probe: the level of the first capture, within every limit of the rig.

@@ -223,6 +223,27 @@ Capture Session::capture(const CaptureRequest& request) {
     }
 }
 
+void Session::require_peak_within_limits(int output, double peak) const {
+    // Nothing can be said in volts before a calibration, and nothing reaches a preamp that is not wired.
+    const bool wired = wiring_ && (wiring_->plug == Plug::both || wiring_->plug == Plug::differential_pad ||
+                                   wiring_->plug == Plug::common_mode_feed);
+    if (!setup_.calibration || !wired || !(peak > 0.0)) return;
+    const auto& routing = setup_.routing;
+    const bool common = routing.common_mode_output ? output == *routing.common_mode_output
+                                                   : wiring_->plug == Plug::common_mode_feed;
+    if (!common && output != routing.differential_output) return;
+    const auto& limit =
+        common ? setup_.limits.max_preamp_common_mode_dbu : setup_.limits.max_preamp_input_dbu;
+    const double level_dbu = units::db_from_ratio(peak) -
+                             converter_level_dbfs(common ? Feed::common_mode : Feed::differential, 0.0);
+    constexpr double rounding_db = 0.001;  // of float samples
+    if (limit && level_dbu > *limit + rounding_db)
+        throw UsageError(fmt::format(
+            "{:.1f} dBu at the preamp's input is more than the rig allows ({:.1f} dBu, [limits] in "
+            "its rig file): nothing was played",
+            level_dbu, *limit));
+}
+
 signal::Recording Session::play_raw(int output, std::span<const double> samples, int inputs) {
     std::vector<std::vector<double>> outputs(static_cast<std::size_t>(output),
                                              std::vector<double>(samples.size(), 0.0));
@@ -248,6 +269,11 @@ signal::Recording Session::play_raw(const std::vector<std::vector<double>>& outp
                 throw UsageError("play: a sample lies beyond full scale");
             request.play[c][n] = static_cast<float>(outputs[c][n]);
         }
+    for (std::size_t c = 0; c < outputs.size(); ++c) {
+        double peak = 0.0;
+        for (double x : outputs[c]) peak = std::max(peak, std::abs(x));
+        require_peak_within_limits(static_cast<int>(c) + 1, peak);
+    }
     const Take take = backend_->play_and_record(request, stop_);
     signal::Recording recording;
     recording.rate_hz = request.rate_hz;
@@ -265,6 +291,7 @@ void Session::play_tone_until(const std::atomic<bool>& stop, int output, double 
     tone.level_dbfs = level_dbfs;
     tone.rate_hz = setup_.audio.sample_rate_hz;
     const auto samples = signal::render(tone);
+    require_peak_within_limits(output, units::sine_peak_from_dbfs(level_dbfs));
     TakeRequest request;
     request.rate_hz = tone.rate_hz;
     request.label = "tone";

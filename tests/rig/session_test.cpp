@@ -150,5 +150,22 @@ TEST(SessionTest, UnpreparedWiringIsRefused) {
     EXPECT_THROW(session.capture(tone()), UsageError);
 }
 
+// Raw samples and tones for a meter pass the same limit as every capture; in a loop there is no preamp to
+// protect.
+TEST(SessionTest, RawSamplesAndTonesKeepTheLimits) {
+    const rig::Setup setup = bench();  // -25 dBu at the preamp behind 40 dB: -3 dBFS of 18 dBu
+    Session session(setup, open_backend(setup));
+    ASSERT_TRUE(session.prepare(session.wiring_for(Feed::differential, "", "")));
+    const std::vector<double> below(4800, 0.7), above(4800, 0.75);
+    EXPECT_NO_THROW(session.play_raw(1, below, 1));
+    EXPECT_THROW(session.play_raw(1, above, 1), UsageError);
+    std::atomic<bool> stop{false};
+    EXPECT_NO_THROW(session.play_tone_until(stop, 1, 220.0, -3.1));
+    EXPECT_THROW(session.play_tone_until(stop, 1, 220.0, -2.9), UsageError);
+    EXPECT_THROW(session.check_path(-2.0), UsageError);
+    ASSERT_TRUE(session.prepare({Plug::loop_differential, "", ""}));
+    EXPECT_NO_THROW(session.play_raw(1, above, 1));
+}
+
 }  // namespace
 }  // namespace coldpin::rig

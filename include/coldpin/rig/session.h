@@ -72,8 +72,9 @@ class Session {
     Capture capture(const CaptureRequest& request);
 
     // Samples as they are on one output, every other one silent; what each input channel from 1 to `inputs`
-    // heard, from the first frame on. For calibrating and path checks: no volts, no ramps, no retakes. Throws
-    // UsageError for samples beyond full scale or wiring that was not prepared.
+    // heard, from the first frame on. For calibrating and path checks: no ramps, no retakes. Throws
+    // UsageError for samples beyond full scale, peaks beyond the rig's limits at the preamp's input, or
+    // wiring that was not prepared.
     signal::Recording play_raw(int output, std::span<const double> samples, int inputs);
     // The same on several outputs at once: one list of samples each, output 1 first, all of one length.
     signal::Recording play_raw(const std::vector<std::vector<double>>& outputs, int inputs);
@@ -95,6 +96,8 @@ class Session {
     void require_within_limits(const CaptureRequest& request) const;
 
   private:
+    // Whatever is asked for, as samples or as a tone: the limits at the preamp's input hold.
+    void require_peak_within_limits(int output, double peak) const;
     signal::Description description_for(const CaptureRequest& request,
                                         const signal::Stimulus& stimulus) const;
 
