@@ -8,8 +8,11 @@
 
 #include <fmt/core.h>
 
+#include "coldpin/measure/crosstalk.h"
+#include "coldpin/measure/distortion.h"
 #include "coldpin/measure/noise.h"
 #include "coldpin/measure/response.h"
+#include "coldpin/measure/timing.h"
 #include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/units/error.h"
 #include "coldpin/units/level.h"
@@ -250,7 +253,7 @@ class Calibrator {
         calibration.loop_latency_frames = result_.path.latency_frames
                                               ? std::optional(*result_.path.latency_frames - 0.02 * rate_)
                                               : std::nullopt;
-        calibration.loop_distortion_db = result_.path.distortion_db;
+        measure_distortion();
         calibration.loop_deviation_db = result_.path.deviation_db;
         if (options_.whole_response) measure_response();
         const double distortion = units::ratio_from_db(calibration.loop_distortion_db.value_or(-100.0));
@@ -258,6 +261,29 @@ class Calibrator {
             rig::meter_uncertainty_db(reading_, options_.accuracy, distortion);
         calibration.input_uncertainty_db =
             std::hypot(std::hypot(calibration.output_uncertainty_db, loading_db), statistics_db_);
+    }
+
+    // A figure of a measurement as one of this calibration.
+    void keep(measure::Figure figure, const char* quantity) {
+        figure.quantity = quantity;
+        result_.findings.figures.push_back(std::move(figure));
+    }
+
+    void measure_distortion() {
+        constexpr double tone_hz = 997.0;
+        const auto heard = session_.play_raw(routing().differential_output,
+                                             tone(tone_hz, loop_level_dbfs_, 0.8, rate_), inputs_);
+        measure::DistortionQuestion question;
+        question.recording = heard.channel(device_input());
+        question.rate_hz = rate_;
+        question.frequency_hz = tone_hz;
+        question.band.high_hz = std::min(20000.0, 0.45 * rate_);
+        question.highest_harmonic = 5;
+        const auto findings = measure::distortion(question);
+        if (const auto* thd = findings.figure("thd")) {
+            result_.calibration.loop_distortion_db = units::db_from_ratio(0.01 * thd->value + 1e-12);
+            keep(*thd, "loop_distortion");
+        }
     }
 
     void measure_reference(const signal::Recording& heard) {
@@ -286,25 +312,32 @@ class Calibrator {
 
     // Other inputs, and the other output, must hear and say nothing.
     void measure_crosstalk(const signal::Recording& heard, double device_dbfs) {
-        double worst = -300.0;
+        std::optional<measure::Figure> worst;
+        const auto consider = [&](const measure::Figure& figure) {
+            if (!worst || figure.value > worst->value) worst = figure;
+        };
         for (int input = 1; input <= inputs_; ++input) {
             if (input == device_input() || input == routing().reference_input) continue;
-            worst = std::max(worst, level_of(heard.channel(input), rate_, meter_hz).dbfs - device_dbfs);
+            const auto findings = measure::crosstalk(
+                {heard.channel(device_input()), heard.channel(input), rate_, meter_hz, {}});
+            if (const auto* figure = findings.figure("crosstalk")) consider(*figure);
         }
         if (routing().common_mode_output) {
             const auto other = session_.play_raw(*routing().common_mode_output,
                                                  tone(meter_hz, loop_level_dbfs_, 0.4, rate_), inputs_);
-            worst =
-                std::max(worst, level_of(other.channel(device_input()), rate_, meter_hz).dbfs - device_dbfs);
+            const Level level = level_of(other.channel(device_input()), rate_, meter_hz);
+            consider({"crosstalk", level.dbfs - device_dbfs, "dB", 2.0 * level.std_db, 2.0,
+                      measure::Bound::exact, measure::Conditions{{"frequency_hz", meter_hz}}});
         }
-        if (worst < -299.0) return;
-        result_.calibration.loop_crosstalk_db = worst;
-        if (worst > separate_db)
+        if (!worst) return;
+        result_.calibration.loop_crosstalk_db = worst->value;
+        keep(*worst, "loop_crosstalk");
+        if (worst->value > separate_db)
             throw CannotMeasure(fmt::format(
                 "channels are not separate: {:.1f} dB from one to another. They are summed to mono, mixed, "
-                "or a plug joins "
-                "them. Switch mono and mixing off in the operating system and the interface's mixer.",
-                worst));
+                "or a plug "
+                "joins them. Switch mono and mixing off in the operating system and the interface's mixer.",
+                worst->value));
     }
 
     void measure_silence() {
@@ -319,8 +352,10 @@ class Calibrator {
         question.rate_hz = rate_;
         question.band.high_hz = std::min(20000.0, 0.45 * rate_);
         const auto findings = measure::noise(question);
-        if (const auto* noise = findings.figure("noise_output"))
+        if (const auto* noise = findings.figure("noise_output")) {
             result_.calibration.loop_noise_dbfs = noise->value;
+            keep(*noise, "loop_noise");
+        }
     }
 
     void measure_response() {
@@ -339,8 +374,18 @@ class Calibrator {
         question.stimulus = sweep;
         question.band.high_hz = std::min(20000.0, 0.45 * rate_);
         auto findings = measure::response(question);
-        if (const auto* deviation = findings.figure("response_deviation"))
+        if (const auto* deviation = findings.figure("response_deviation")) {
             result_.calibration.loop_deviation_db = std::abs(deviation->value);
+            keep(*deviation, "loop_deviation");
+        }
+        measure::TimingQuestion timing;
+        timing.recording = question.recording;
+        timing.rate_hz = rate_;
+        timing.stimulus = sweep;
+        if (const auto latency = measure::latency(timing); !latency.figures.empty()) {
+            result_.calibration.loop_latency_frames = latency.figures.front().value;
+            keep(latency.figures.front(), "loop_latency");
+        }
         result_.findings.curves = std::move(findings.curves);
     }
 
@@ -424,14 +469,10 @@ class Calibrator {
         add("input_full_scale", calibration.input_full_scale_dbu, "dBu", calibration.input_uncertainty_db);
         add("reference_full_scale", calibration.reference_full_scale_dbu, "dBu",
             calibration.input_uncertainty_db);
-        add("loop_noise", calibration.loop_noise_dbfs, "dBFS", 0.2);
-        add("loop_distortion", calibration.loop_distortion_db, "dB", 1.0);
-        add("loop_deviation", calibration.loop_deviation_db, "dB", 0.01);
-        add("loop_crosstalk", calibration.loop_crosstalk_db, "dB", 1.0);
-        add("loop_latency", calibration.loop_latency_frames, "frames", 0.1);
         add("loop_polarity", static_cast<double>(result_.path.polarity), "", 0.0);
         if (calibration.loop_dc) add("loop_offset", 1e6 * *calibration.loop_dc, "ppm", 1.0);
-        if (result_.path.clock_ppm) add("loop_clock", *result_.path.clock_ppm, "ppm", 0.3);
+        if (result_.path.clock_ppm)
+            add("loop_clock", *result_.path.clock_ppm, "ppm", 2.0 * result_.path.clock_std_ppm.value_or(0.0));
     }
 
     static constexpr std::size_t steps = 5;

@@ -31,7 +31,8 @@ measure::Findings fixture_findings(const rig::FixtureParts& parts, double unit_r
                 parts.measured_differential_loss_uncertainty_db, {{"measured", true}});
         add("differential_loss", pad.loss_db, "dB", pad.loss_uncertainty_db);
         add("differential_loss_from_emf", pad.loss_from_emf_db, "dB", pad.loss_uncertainty_db);
-        add("differential_loss_20_khz", pad.loss_db + pad.loss_at_20_khz_db, "dB", pad.loss_uncertainty_db);
+        add("differential_loss", pad.loss_db + pad.loss_at_20_khz_db, "dB", pad.loss_uncertainty_db,
+            {{"frequency_hz", 20000.0}});
         add("source_resistance", pad.source_ohms, "ohm", pad.source_uncertainty_ohms);
         const double kelvin = units::celsius_zero_k + temperature_c;
         const measure::Conditions warm = {{"temperature_c", temperature_c}};

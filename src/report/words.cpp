@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <string_view>
 
 #include <fmt/core.h>
 
@@ -43,6 +44,18 @@ Scaled scale_for(const measure::Figure& figure) {
         scaled = {1e-3, "kHz", 0};
     if (figure.unit == "s") scaled = size < 1e-3 ? Scaled{1e6, "µs", 0} : Scaled{1e3, "ms", 0};
     scaled.decimals = decimals_for(figure.uncertainty * scaled.factor);
+    // A ratio far below a thousandth of a per cent is not nothing: "0.0000 %" would say so.
+    if (figure.unit == "%" && size > 0.0 && size < 0.001) {
+        scaled = {1e4, "ppm", 0};
+        const double shown = figure.uncertainty > 0.0 ? figure.uncertainty : 0.1 * size;
+        scaled.decimals =
+            std::clamp(1 - static_cast<int>(std::floor(std::log10(shown * scaled.factor))), 0, 6);
+        return scaled;
+    }
+    if (figure.bound != measure::Bound::exact && figure.unit == "%" && size > 0.0) {
+        scaled.decimals = std::clamp(1 - static_cast<int>(std::floor(std::log10(size))), 0, 4);
+        return scaled;
+    }
     if (figure.unit == "dB" || figure.unit.rfind("dB", 0) == 0)
         scaled.decimals = std::clamp(scaled.decimals, 1, 3);
     return scaled;
@@ -117,6 +130,18 @@ std::string limit_text(const profile::Requirement& requirement) {
 std::string quantity_text(const std::string& quantity, const measure::Conditions& conditions) {
     const profile::Quantity* known = profile::find_quantity(quantity);
     std::string text = known != nullptr ? std::string(known->words) : quantity;
+    std::replace(text.begin(), text.end(), '_', ' ');
+    // Which of several alike: the wiring of a hum search, the place that adds, measured against computed.
+    for (const char* name : {"step", "place"})
+        if (const auto* value = conditions.find(name))
+            if (const auto* word = std::get_if<std::string>(value)) {
+                text += (std::string_view(name) == "step" ? ", up to " : ", ") + *word;
+                std::replace(text.begin(), text.end(), '_', ' ');
+            }
+    if (const auto* measured = conditions.find("measured"))
+        if (const bool* is = std::get_if<bool>(measured); is != nullptr && *is) text += ", measured";
+    if (const double rejection = number_or(conditions.find("unit_rejection_db"), 0.0); rejection > 0.0)
+        text += fmt::format(" on a unit of {:g} dB rejection", rejection);
     if (const auto* weighting = conditions.find("weighting")) {
         const std::string* name = std::get_if<std::string>(weighting);
         if (name != nullptr && *name == "none") text += ", unweighted";

@@ -276,6 +276,7 @@ class PathLook {
         report_.clock_ppm = -ppm;
         const double std_ppm = low.spread_rad / (two_pi * probe_.low_hz / rate_) * 1e6 /
                                (low.frame.back() - low.frame.front()) * 4.0;
+        report_.clock_std_ppm = std_ppm;
         if (std::abs(ppm) < std::max(clock_ppm_limit, sure * std_ppm)) return;
         // A jump bends the slope little, since it is a median; a wander differs from half to half.
         const std::size_t half = low.rad.size() / 2;

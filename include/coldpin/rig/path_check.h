@@ -39,9 +39,10 @@ struct PathReport {
     std::optional<double> latency_frames;  // fractional, from the probe's first frame as recorded
     std::optional<double> deviation_db;    // largest from flat, 100 Hz to 15 kHz
     std::optional<double> clock_ppm;       // the input's clock against the output's
-    std::optional<double> distortion_db;   // harmonics 2 to 5 at the highest level, re the fundamental
-    int polarity = 0;                      // +1, -1; 0: not told
-    bool honest() const noexcept;          // no finding that spoils
+    std::optional<double> clock_std_ppm;
+    std::optional<double> distortion_db;  // harmonics 2 to 5 at the highest level, re the fundamental
+    int polarity = 0;                     // +1, -1; 0: not told
+    bool honest() const noexcept;         // no finding that spoils
     const PathFinding* finding(PathFault fault) const;
 };
 
