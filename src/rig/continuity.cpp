@@ -9,6 +9,7 @@
 
 #include <fmt/core.h>
 
+#include "coldpin/spectrum/statistics.h"
 #include "coldpin/spectrum/tone_extent.h"
 #include "coldpin/spectrum/window.h"
 
@@ -19,16 +20,10 @@ namespace coldpin::rig {
 
 namespace {
 
+using spectrum::median;
 using Complex = std::complex<double>;
 constexpr double two_pi = 2.0 * std::numbers::pi;
 constexpr double sure = 7.0;  // standard deviations
-
-double median(std::vector<double> values) {
-    if (values.empty()) return 0.0;
-    const auto middle = values.begin() + static_cast<std::ptrdiff_t>(values.size() / 2);
-    std::nth_element(values.begin(), middle, values.end());
-    return *middle;
-}
 
 // Spread of a series about its slow course, by the median of its second differences.
 double spread_of(const std::vector<double>& series) {
@@ -277,12 +272,12 @@ void check_sweep(std::span<const double> channel, double rate_hz, const signal::
     const double tightest =
         check_unrolled(unroll(channel, rate_hz, stimulus, lag.frames, block, 1000.0, rate_hz), report);
     if (!report.whole()) return;
-    const LowSweepReport low = find_low_slip(channel, rate_hz, stimulus, lag.frames);
-    if (low.slip)
+    const auto slip = find_low_slip(channel, rate_hz, stimulus, lag.frames);
+    if (slip)
         report.glitches.push_back(
             {fmt::format("the sweep's phase jumps by about {:.1f} frame(s): frames were lost or repeated",
-                         std::abs(low.slip->frames)),
-             low.slip->frame});
+                         std::abs(slip->frames)),
+             slip->frame});
     report.proven = report.whole() && tightest * sure < 3.5;
 }
 

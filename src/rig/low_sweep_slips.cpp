@@ -8,10 +8,13 @@
 
 #include <Eigen/Dense>
 
+#include "coldpin/spectrum/statistics.h"
+
 namespace coldpin::rig {
 
 namespace {
 
+using spectrum::median;
 using Complex = std::complex<double>;
 constexpr double two_pi = 2.0 * std::numbers::pi;
 constexpr int per_turn = 16;
@@ -84,12 +87,6 @@ class RunningIntegral {
     std::vector<double> sums_;
 };
 
-double median(std::vector<double> values) {
-    const auto middle = values.begin() + static_cast<std::ptrdiff_t>(values.size() / 2);
-    std::nth_element(values.begin(), middle, values.end());
-    return *middle;
-}
-
 // The sweep in sixteenths of its turns, and what the windows around them give.
 struct Course {
     std::vector<double> frames;      // of the recording, where a window has its middle
@@ -139,14 +136,14 @@ std::optional<LowSlip> find_whole_turns(const Course& course, double rate_hz) {
 
 }  // namespace
 
-LowSweepReport find_low_slip(std::span<const double> channel, double rate_hz,
-                             const signal::Stimulus& stimulus, long long lag) {
+std::optional<LowSlip> find_low_slip(std::span<const double> channel, double rate_hz,
+                                     const signal::Stimulus& stimulus, long long lag) {
     const auto& sweep = std::get<signal::Sweep>(stimulus.kind);
     const double constant_s = signal::sweep_time_constant_s(sweep, stimulus.length_s);
     const double turns_per_e = sweep.from_hz * constant_s;  // the sweep's phase is turns_per_e exp(t / L)
     const double low_hz = 1.5 * sweep.from_hz, high_hz = std::min(rate_hz / 40.0, 0.8 * sweep.to_hz);
-    LowSweepReport report;
-    if (high_hz < 2.0 * low_hz) return report;
+    std::optional<LowSlip> slip;
+    if (high_hz < 2.0 * low_hz) return slip;
     const double first_turn = std::ceil(constant_s * low_hz), last_turn = std::floor(constant_s * high_hz);
     const RunningIntegral integral(channel);
     const auto frame_at = [&](double turn) {
@@ -161,7 +158,7 @@ LowSweepReport find_low_slip(std::span<const double> channel, double rate_hz,
     }
     const int window = 2 * half_points;
     const auto count = static_cast<int>(points.size()) - window + 1;
-    if (count < 4 * neighbourhood * per_turn) return report;
+    if (count < 4 * neighbourhood * per_turn) return slip;
     static const Functionals functionals = make_functionals();
     Course course;
     for (int k = 0; k < count; ++k) {
@@ -189,8 +186,7 @@ LowSweepReport find_low_slip(std::span<const double> channel, double rate_hz,
         beyond.push_back(steps[static_cast<std::size_t>(k)] - 0.5 * (before + after));
         places.push_back(k);
     }
-    if (beyond.empty()) return report;
-    report.searched = true;
+    if (beyond.empty()) return slip;
     const auto length = static_cast<int>(beyond.size());
     double clearest = 1.0, needed = 0.0;
     for (int i = 0; i < length; ++i) {
@@ -201,17 +197,16 @@ LowSweepReport find_low_slip(std::span<const double> channel, double rate_hz,
             for (int j = first; j < last; ++j)
                 if (std::abs(j - i) > near) around.push_back(std::abs(beyond[static_cast<std::size_t>(j)]));
             needed = std::max(least_step_frames, sure * median(around) / 0.6745);
-            report.least_frames = std::max(report.least_frames, needed);
         }
         const double clarity = std::abs(beyond[static_cast<std::size_t>(i)]) / needed;
         if (clarity > clearest) {
             clearest = clarity;
             const auto at = static_cast<std::size_t>(places[static_cast<std::size_t>(i)]);
-            report.slip = {static_cast<std::size_t>(course.frames[at]), beyond[static_cast<std::size_t>(i)]};
+            slip = {static_cast<std::size_t>(course.frames[at]), beyond[static_cast<std::size_t>(i)]};
         }
     }
-    if (!report.slip) report.slip = find_whole_turns(course, rate_hz);
-    return report;
+    if (!slip) slip = find_whole_turns(course, rate_hz);
+    return slip;
 }
 
 }  // namespace coldpin::rig

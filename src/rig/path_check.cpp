@@ -11,6 +11,7 @@
 
 #include "coldpin/spectrum/fft.h"
 #include "coldpin/spectrum/phasor_sum.h"
+#include "coldpin/spectrum/statistics.h"
 #include "coldpin/spectrum/window.h"
 #include "coldpin/units/level.h"
 
@@ -21,6 +22,7 @@ namespace coldpin::rig {
 
 namespace {
 
+using spectrum::median;
 using Complex = std::complex<double>;
 constexpr double two_pi = 2.0 * std::numbers::pi;
 
@@ -40,12 +42,6 @@ constexpr double edge_ratio = 0.35;     // -9 dB
 constexpr double edge_of_rate = 0.485;  // converters pass up to here, resamplers of a lower rate do not
 constexpr std::array<double, 10> common_rates_hz = {8000,  11025, 16000, 22050, 24000,
                                                     32000, 44100, 48000, 88200, 96000};
-
-double median(std::vector<double> values) {
-    const auto middle = values.begin() + static_cast<std::ptrdiff_t>(values.size() / 2);
-    std::nth_element(values.begin(), middle, values.end());
-    return *middle;
-}
 
 // One look at the recording, in steps that share what they found.
 class PathLook {
@@ -610,34 +606,6 @@ const PathFinding* PathReport::finding(PathFault fault) const {
     const auto found = std::find_if(findings.begin(), findings.end(),
                                     [&](const PathFinding& one) { return one.fault == fault; });
     return found != findings.end() ? &*found : nullptr;
-}
-
-std::string path_fault_name(PathFault fault) {
-    switch (fault) {
-        case PathFault::not_heard:
-            return "not_heard";
-        case PathFault::resampled:
-            return "resampled";
-        case PathFault::level_dependent:
-            return "level_dependent";
-        case PathFault::filtered:
-            return "filtered";
-        case PathFault::echo:
-            return "echo";
-        case PathFault::inverted:
-            return "inverted";
-        case PathFault::frames_lost:
-            return "frames_lost";
-        case PathFault::two_clocks:
-            return "two_clocks";
-        case PathFault::unsteady_clocks:
-            return "unsteady_clocks";
-        case PathFault::level_moved:
-            return "level_moved";
-        case PathFault::clipped:
-            return "clipped";
-    }
-    return "";
 }
 
 PathReport check_path(std::span<const double> recording, double rate_hz, double level_dbfs,

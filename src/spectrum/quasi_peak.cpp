@@ -54,17 +54,6 @@ double steady_reading(double rate_hz, const auto& run) {
 
 }  // namespace
 
-std::complex<double> itu468_network(double f) noexcept {
-    const double f_2 = f * f;
-    const double h1 =
-        ((-4.737338981378384e-24 * f_2 + 2.043828333606125e-15) * f_2 - 1.363894795463638e-7) * f_2 + 1.0;
-    const double h2 =
-        ((1.306612257412824e-19 * f_2 - 2.118150887518656e-11) * f_2 + 5.559488023498642e-4) * f;
-    const std::complex<double> shape = std::complex<double>(0.0, f) / std::complex<double>(h1, h2);
-    const double size = std::abs(shape);
-    return size > 0.0 ? shape / size * weighting_gain(Weighting::itu468, f) : 0.0;
-}
-
 QuasiPeakDetector::QuasiPeakDetector(double rate_hz)
     : fast_charge_(charge(fast_charge_s, rate_hz)),
       fast_hold_(hold(fast_discharge_s, rate_hz)),

@@ -34,4 +34,11 @@ double combine(double a, double b, double c) {
     return std::hypot(a, b, c);
 }
 
+double median(std::vector<double> values) {
+    if (values.empty()) return 0.0;
+    const auto middle = values.begin() + static_cast<std::ptrdiff_t>(values.size() / 2);
+    std::nth_element(values.begin(), middle, values.end());
+    return *middle;
+}
+
 }  // namespace coldpin::spectrum

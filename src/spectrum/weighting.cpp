@@ -22,13 +22,17 @@ double a_response(double f) {
 }
 
 // The rational form in common use for the network of ITU-R BS.468-4; within 0.05 dB of the standard's table.
-double itu468_response(double f) {
+std::complex<double> itu468_shape(double f) {
     const double f_2 = f * f;
     const double h1 =
         ((-4.737338981378384e-24 * f_2 + 2.043828333606125e-15) * f_2 - 1.363894795463638e-7) * f_2 + 1.0;
     const double h2 =
         ((1.306612257412824e-19 * f_2 - 2.118150887518656e-11) * f_2 + 5.559488023498642e-4) * f;
-    return 1.246332637532143e-4 * f / std::hypot(h1, h2);
+    return 1.246332637532143e-4 * std::complex<double>(0.0, f) / std::complex<double>(h1, h2);
+}
+
+double itu468_response(double f) {
+    return std::abs(itu468_shape(f));
 }
 
 }  // namespace
@@ -47,6 +51,11 @@ double weighting_gain(Weighting weighting, double frequency_hz) noexcept {
             break;
     }
     return itu468_response(frequency_hz) / itu_at_1k;
+}
+
+std::complex<double> itu468_network(double frequency_hz) noexcept {
+    static const double at_1k = itu468_response(1000.0);
+    return itu468_shape(frequency_hz) / at_1k;
 }
 
 std::string_view weighting_name(Weighting weighting) noexcept {

@@ -89,7 +89,7 @@ TEST(ContentCheckTest, LostAndRepeatedFramesAreFoundWhereverTheyAre) {
 }
 
 // Also where a frame turns the phase by a degree: through ordinary filters, with hum 60 dB below the sweep.
-// One frame from 65 Hz up; below, where it moves no figure by more than 0.03 dB, seven.
+// One frame from 65 Hz up; below, where it turns the sweep by less than half a degree, seven.
 TEST(ContentCheckTest, FewFramesAreFoundLowInASweepToo) {
     unsigned seed = 900;
     for (double corner_hz : {3.0, 60.0})

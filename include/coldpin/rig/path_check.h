@@ -22,7 +22,6 @@ enum class PathFault {
     level_moved,      // not the level that the calibration saw: a knob was moved
     clipped,          // at either converter
 };
-std::string path_fault_name(PathFault fault);  // "resampled": for JSON
 
 struct PathFinding {
     PathFault fault = PathFault::not_heard;

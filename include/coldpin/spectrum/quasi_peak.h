@@ -1,15 +1,11 @@
 // The quasi-peak meter of ITU-R BS.468-4: its network, and the detector that reads how much bursts annoy.
 #pragma once
 
-#include <complex>
 #include <cstddef>
 #include <span>
 #include <vector>
 
 namespace coldpin::spectrum {
-
-// The network's complex response, 1 kHz = 0 dB; its size is weighting_gain(Weighting::itu468).
-std::complex<double> itu468_network(double frequency_hz) noexcept;
 
 // The detector alone, on samples that come one by one at a steady rate: rectified, then two peak-holding
 // stages in a row (charge 1.41 ms and 161 ms, discharge 322 ms and 711 ms, fitted to the standard's tables of

@@ -1,6 +1,8 @@
 // Quantiles and intervals for estimates (Boost.Math).
 #pragma once
 
+#include <vector>
+
 namespace coldpin::spectrum {
 
 double chi_square_quantile(double probability, double degrees_of_freedom);
@@ -13,6 +15,9 @@ double power_uncertainty_db(double relative_std);
 
 // The same for an amplitude with a relative standard deviation: 20 lg.
 double amplitude_uncertainty_db(double relative_std);
+
+// The middle value (the upper one of two); 0 for none.
+double median(std::vector<double> values);
 
 // Root of the sum of squares.
 double combine(double a, double b);
