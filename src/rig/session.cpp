@@ -325,11 +325,9 @@ PathReport Session::check_path(double level_dbfs) {
     probe.resize(probe.size() + static_cast<std::size_t>(after_s * rate), 0.0);
     const auto heard = play_raw(output, probe, input);
     PathExpectation expectation;
-    if (!loop && setup_.calibration && setup_.calibration->reference_full_scale_dbu) {
+    if (!loop && setup_.calibration && setup_.calibration->reference_full_scale_dbu)
         expectation.gain_db =
             setup_.calibration->output_full_scale_dbu - *setup_.calibration->reference_full_scale_dbu;
-        expectation.deviation_db = setup_.calibration->loop_deviation_db;
-    }
     return rig::check_path(heard.channel(input), rate, level_dbfs, expectation);
 }
 

@@ -46,9 +46,7 @@ struct PathReport {
 };
 
 struct PathExpectation {
-    std::optional<double> gain_db;       // what the calibration saw
-    double gain_uncertainty_db = 0.0;    // k = 2
-    std::optional<double> deviation_db;  // of the response then
+    std::optional<double> gain_db;  // what the calibration saw
 };
 
 // The probe: 997 Hz at level - 20, - 10, 0 and - 20 dB, a tone at 0.46 of the rate, a sweep to 0.495 of the
