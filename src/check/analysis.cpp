@@ -260,23 +260,6 @@ std::optional<DescribedRecording> by_the_outputs_clock(const DescribedRecording*
     return corrected;
 }
 
-Findings analyse_as_is(const std::string& kind, const AnalysisInputs& inputs, const AnalysisOptions& options);
-
-}  // namespace
-
-Findings analyse(const std::string& kind, const AnalysisInputs& inputs, const AnalysisOptions& options) {
-    const auto main = by_the_outputs_clock(inputs.main),
-               common_mode = by_the_outputs_clock(inputs.common_mode),
-               leakage = by_the_outputs_clock(inputs.leakage);
-    AnalysisInputs by_one_clock = inputs;
-    if (main) by_one_clock.main = &*main;
-    if (common_mode) by_one_clock.common_mode = &*common_mode;
-    if (leakage) by_one_clock.leakage = &*leakage;
-    return analyse_as_is(kind, by_one_clock, options);
-}
-
-namespace {
-
 Findings analyse_as_is(const std::string& kind, const AnalysisInputs& inputs,
                        const AnalysisOptions& options) {
     if (kind == "gain") return analyse_gain(inputs, options);
@@ -294,5 +277,16 @@ Findings analyse_as_is(const std::string& kind, const AnalysisInputs& inputs,
 }
 
 }  // namespace
+
+Findings analyse(const std::string& kind, const AnalysisInputs& inputs, const AnalysisOptions& options) {
+    const auto main = by_the_outputs_clock(inputs.main),
+               common_mode = by_the_outputs_clock(inputs.common_mode),
+               leakage = by_the_outputs_clock(inputs.leakage);
+    AnalysisInputs by_one_clock = inputs;
+    if (main) by_one_clock.main = &*main;
+    if (common_mode) by_one_clock.common_mode = &*common_mode;
+    if (leakage) by_one_clock.leakage = &*leakage;
+    return analyse_as_is(kind, by_one_clock, options);
+}
 
 }  // namespace coldpin::check

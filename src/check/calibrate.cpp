@@ -1,13 +1,11 @@
 #include "coldpin/check/calibrate.h"
 
 #include <algorithm>
-#include <atomic>
 #include <cmath>
-#include <exception>
-#include <thread>
 
 #include <fmt/core.h>
 
+#include "coldpin/measure/clipping.h"
 #include "coldpin/measure/crosstalk.h"
 #include "coldpin/measure/distortion.h"
 #include "coldpin/measure/noise.h"
@@ -16,6 +14,9 @@
 #include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/units/error.h"
 #include "coldpin/units/level.h"
+
+#include "reading_agreement.h"
+#include "tone_player.h"
 
 namespace coldpin::check {
 
@@ -30,7 +31,6 @@ constexpr double cautious_dbfs = -30.0;  // the first look, before anything is k
 constexpr double loading_db = 0.04;
 constexpr double silent_dbfs = -80.0;
 constexpr double separate_db = -40.0;  // two channels that leak more are not two channels
-constexpr double least_full_scale_dbu = -60.0, most_full_scale_dbu = 36.0;
 
 struct Level {
     double dbfs = -300.0;
@@ -57,35 +57,6 @@ std::vector<double> tone(double frequency_hz, double level_dbfs, double length_s
     return samples;
 }
 
-// Plays in the background while someone reads a meter.
-class TonePlayer {
-  public:
-    TonePlayer(rig::Session& session, int output, double level_dbfs)
-        : thread_([this, &session, output, level_dbfs] {
-              try {
-                  session.play_tone_until(stop_, output, meter_hz, level_dbfs);
-              } catch (...) {
-                  failure_ = std::current_exception();
-              }
-          }) {}
-    ~TonePlayer() {
-        stop_ = true;
-        if (thread_.joinable()) thread_.join();
-    }
-    TonePlayer(const TonePlayer&) = delete;
-    TonePlayer& operator=(const TonePlayer&) = delete;
-    void finish() {
-        stop_ = true;
-        thread_.join();
-        if (failure_) std::rethrow_exception(failure_);
-    }
-
-  private:
-    std::atomic<bool> stop_{false};
-    std::exception_ptr failure_;
-    std::thread thread_;
-};
-
 // The steps, each leaving its part of the result.
 class Calibrator {
   public:
@@ -102,7 +73,8 @@ class Calibrator {
         look_at_loop();
         measure_loop();
         measure_common_mode_output();
-        require_agreement();
+        if (!options_.accept_reading)
+            require_agreement(result_.calibration, session_.setup().calibration, reading_.volts_rms);
         note_knobs();
         list_figures();
         return result_;
@@ -122,7 +94,7 @@ class Calibrator {
     // ---- the meter
 
     std::string asked_reading(double level_dbfs, const std::string& question) {
-        TonePlayer player(session_, routing().differential_output, level_dbfs);
+        TonePlayer player(session_, routing().differential_output, meter_hz, level_dbfs);
         std::string text = bench_.answer(question);
         player.finish();
         return text;
@@ -298,7 +270,7 @@ class Calibrator {
             return;
         }
         const auto channel = heard.channel(*routing().reference_input);
-        if (std::any_of(channel.begin(), channel.end(), [](double x) { return std::abs(x) >= 0.9999; })) {
+        if (measure::find_clipping(channel).samples_at_full_scale > 0) {
             result_.findings.cautions.push_back(
                 fmt::format("The reference input {} clips at {:.1f} dBFS of the output: turn it down and "
                             "calibrate again. "
@@ -404,42 +376,6 @@ class Calibrator {
                             device_input(), *routing().common_mode_output));
         result_.calibration.common_mode_output_full_scale_dbu =
             result_.calibration.input_full_scale_dbu + level.dbfs - loop_level_dbfs_;
-    }
-
-    // ---- does it hang together?
-
-    void require_agreement() const {
-        const auto& now = result_.calibration;
-        if (options_.accept_reading) return;
-        if (now.input_full_scale_dbu < least_full_scale_dbu || now.input_full_scale_dbu > most_full_scale_dbu)
-            throw UsageError(
-                fmt::format("the reading contradicts the loop: with {:.4g} V at the output the input's full "
-                            "scale would be {:+.1f} dBu. "
-                            "Read AC volts across pins 2 and 3, at the output, with the tone playing. The "
-                            "calibration before stays "
-                            "valid.",
-                            reading_.volts_rms, now.input_full_scale_dbu));
-        const auto& before = session_.setup().calibration;
-        if (!before || before->time_utc.empty()) return;
-        const double output_db = now.output_full_scale_dbu - before->output_full_scale_dbu;
-        const double loop_db = (now.output_full_scale_dbu - now.input_full_scale_dbu) -
-                               (before->output_full_scale_dbu - before->input_full_scale_dbu);
-        constexpr double same_db = 0.1, other_db = 1.0;
-        if (std::abs(loop_db) > same_db || std::abs(output_db) < other_db) return;
-        std::string likely = "the wrong range or place";
-        for (const auto& [db, cause] :
-             {std::pair{-6.02, "one leg against pin 1 instead of across both"},
-              {6.02, "across both legs, where one leg against pin 1 was read before"},
-              {3.01, "a peak value instead of RMS"},
-              {9.03, "a peak-to-peak value instead of RMS"}})
-            if (std::abs(output_db - db) < 0.3) likely = cause;
-        throw UsageError(
-            fmt::format("the reading contradicts the loop: output to input is as it was within {:.2f} dB, "
-                        "yet the reading says that the "
-                        "output changed by {:+.1f} dB ({}). Read again; if both knobs really moved alike, "
-                        "add --accept-reading. The "
-                        "calibration before stays valid.",
-                        std::abs(loop_db), output_db, likely));
     }
 
     void note_knobs() {

@@ -174,7 +174,8 @@ void look_ahead(const profile::DeviceProfile& profile, rig::Session& session,
         if (finding.spoils) throw CannotMeasure(finding.sentence);
         cautions.push_back(finding.sentence);
     }
-    if (!setup.routing.reference_input) return;
+    constexpr double least_rate_hz = 16000.0;  // of the probe
+    if (!setup.routing.reference_input || setup.audio.sample_rate_hz < least_rate_hz) return;
     // As loud as the run itself, so that what happens at its level is seen.
     const double level_dbfs = std::min(
         -3.0, session.converter_level_dbfs(rig::Feed::differential, loudest_drive_dbu(first, setup)));

@@ -5,6 +5,7 @@
 
 #include <fmt/core.h>
 
+#include "coldpin/measure/clipping.h"
 #include "coldpin/measure/timing.h"
 #include "coldpin/measure/transfer.h"
 #include "coldpin/spectrum/averaged_spectrum.h"
@@ -22,7 +23,6 @@ constexpr double harmless_drive_dbu = -60.0;
 constexpr double common_mode_drive_dbu = -20.0;
 constexpr double silence_s = 0.25, sweep_s = 0.30, gap_s = 0.12, tone_s = 0.20, tail_s = 0.12, lead_s = 0.05;
 constexpr double tone_hz = 997.0;
-constexpr double full_scale = 0.9999;
 constexpr double half_db = 6.0206;  // one leg of two
 
 // Where the parts lie in the take, in frames, and what was played.
@@ -44,8 +44,7 @@ bool all_zero(std::span<const double> samples) {
 }
 
 bool clips(std::span<const double> samples) {
-    return std::count_if(samples.begin(), samples.end(),
-                         [](double x) { return std::abs(x) >= full_scale; }) >= 2;
+    return measure::find_clipping(samples).samples_at_full_scale >= 2;
 }
 
 class Preflight {

@@ -7,6 +7,7 @@
 
 #include <fmt/core.h>
 
+#include "coldpin/measure/clipping.h"
 #include "coldpin/spectrum/sine_fit.h"
 #include "coldpin/units/error.h"
 #include "coldpin/units/level.h"
@@ -20,7 +21,6 @@ constexpr double tone_hz = 997.0;
 constexpr double tone_s = 0.25, tail_s = 0.15;
 constexpr double margin_db = 3.0;
 constexpr double most_distortion = 0.01, most_compression_db = 0.5;
-constexpr double full_scale = 0.9999;
 constexpr int most_captures = 4;
 constexpr double least_heard_dbfs = -100.0;
 
@@ -63,8 +63,8 @@ Look look_at(rig::Session& session, int input, double drive_dbu) {
     for (std::size_t k = 1; k < fit.phasors.size(); ++k) harmonics += std::norm(fit.phasors[k]);
     look.level_dbfs = units::db_from_ratio(fundamental + 1e-15);
     look.distortion = std::sqrt(harmonics) / (fundamental + 1e-15);
-    look.clips = std::count_if(channel.begin(), channel.end(),
-                               [](double x) { return std::abs(x) >= full_scale; }) >= 2;
+    look.clips = measure::find_clipping(channel).samples_at_full_scale >= 2;
+
     return look;
 }
 

@@ -7,16 +7,12 @@
 
 #include "coldpin/profile/rig_file.h"
 
+#include "kit/nobody.h"
+
 namespace coldpin::check {
 namespace {
 
 using testing::HasSubstr;
-
-class Nobody : public Bench {
-  public:
-    void ask(const std::string& instruction) override { FAIL() << instruction; }
-    void progress(const std::string& /*what*/, std::size_t /*step*/, std::size_t /*steps*/) override {}
-};
 
 // A bench without hum, of a unit of 40 dB.
 rig::Setup quiet(unsigned seed) {
@@ -31,7 +27,7 @@ rig::Setup quiet(unsigned seed) {
 
 HumSearchReport searched(const rig::Setup& setup) {
     rig::Session session(setup, rig::open_backend(setup));
-    Nobody nobody;
+    tests::Nobody nobody;
     return search_hum(session, nobody, {});
 }
 

@@ -10,6 +10,8 @@
 #include "coldpin/check/perform.h"
 #include "coldpin/units/error.h"
 
+#include "kit/nobody.h"
+
 namespace coldpin::check {
 namespace {
 
@@ -156,10 +158,7 @@ TEST(PreflightTest, MoreRejectionThanTheFixtureShowsIsNoRejection) {
 }
 
 TEST(PreflightTest, ARunSaysOrRefuses) {
-    class Nobody : public Bench {
-        void ask(const std::string& instruction) override { FAIL() << instruction; }
-        void progress(const std::string& /*what*/, std::size_t /*step*/, std::size_t /*steps*/) override {}
-    } nobody;
+    tests::Nobody nobody;
     auto rig = profile::read_rig("simulated");
     rig.setup.simulated.preamp = device().simulated;
     const auto run = [&](const std::function<void(Faults&)>& make, const RunDetails& details = {}) {
@@ -182,10 +181,7 @@ TEST(PreflightTest, ARunSaysOrRefuses) {
 
 // Two clocks 40 ppm apart: measured, corrected, said; every figure as with one clock.
 TEST(PreflightTest, SteadyClocksThatDifferAreCorrected) {
-    class Nobody : public Bench {
-        void ask(const std::string& instruction) override { FAIL() << instruction; }
-        void progress(const std::string& /*what*/, std::size_t /*step*/, std::size_t /*steps*/) override {}
-    } nobody;
+    tests::Nobody nobody;
     auto rig = profile::read_rig("simulated");
     rig.setup.simulated.preamp = device().simulated;
     const auto run = [&](double ppm) {

@@ -8,6 +8,8 @@
 #include "coldpin/check/perform.h"
 #include "coldpin/units/error.h"
 
+#include "kit/nobody.h"
+
 namespace coldpin::check {
 namespace {
 
@@ -91,10 +93,7 @@ TEST(RangingTest, WhatTheInterfaceDecidesIsSaidWithTheCure) {
 }
 
 TEST(RangingTest, ARunAtTheFoundLevelAgreesWithOneAtTheUsual) {
-    class Nobody : public Bench {
-        void ask(const std::string& instruction) override { FAIL() << instruction; }
-        void progress(const std::string& /*what*/, std::size_t /*step*/, std::size_t /*steps*/) override {}
-    } nobody;
+    tests::Nobody nobody;
     const auto device =
         profile::read_device_profile(std::string(COLDPIN_SOURCE_DIR) + "/profiles/devices/saltmarsh-s4.toml");
     auto rig = profile::read_rig("simulated");

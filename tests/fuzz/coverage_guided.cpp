@@ -7,7 +7,7 @@
 extern "C" int LLVMFuzzerTestOneInput(const std::uint8_t* data, std::size_t size) {
     if (size == 0) return 0;
     const auto& all = coldpin::tests::readers();
-    coldpin::tests::returns_or_refuses(all[data[0] % all.size()],
-                                       std::string(reinterpret_cast<const char*>(data) + 1, size - 1));
+    coldpin::tests::read_or_refuse(all[data[0] % all.size()],
+                                   std::string(reinterpret_cast<const char*>(data) + 1, size - 1));
     return 0;
 }

@@ -18,7 +18,7 @@ struct Reader {
 
 const std::vector<Reader>& readers();
 
-// True when the reader returned or refused; anything else escapes.
-bool returns_or_refuses(const Reader& reader, const std::string& bytes);
+// Anything but returning or a coldpin::Error escapes.
+void read_or_refuse(const Reader& reader, const std::string& bytes);
 
 }  // namespace coldpin::tests

@@ -9,7 +9,7 @@ namespace coldpin::spectrum {
 
 // The detector alone, on samples that come one by one at a steady rate: rectified, then two peak-holding
 // stages in a row (charge 1.41 ms and 161 ms, discharge 322 ms and 711 ms, fitted to the standard's tables of
-// single and repeated bursts). A steady sine reads its RMS. Rates of 80 kHz and more, or the peaks of what
+// single and repeated bursts). A steady sine reads its RMS. Rates of 88 kHz and more, or the peaks of what
 // lies near the band's end are missed. Not for several threads at once.
 class QuasiPeakDetector {
   public:
@@ -26,7 +26,7 @@ class QuasiPeakDetector {
     double fast_ = 0.0, slow_ = 0.0, scale_ = 1.0;
 };
 
-// A whole recording through network and detector, oversampled to 80 kHz or more within [low, high] Hz.
+// A whole recording through network and detector, oversampled to 88 kHz or more within [low, high] Hz.
 // `readings`: the highest in each stretch of 0.1 s. Throws UsageError for rates below 32 kHz (the network's
 // band would be cut) or fewer than 0.1 s.
 struct QuasiPeakReading {
